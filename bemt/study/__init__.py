@@ -1,0 +1,1 @@
+"""Many tables made into one answer: sweeps, calibration, comparison and bands."""
