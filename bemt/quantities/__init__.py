@@ -1,0 +1,1 @@
+"""The registry of result variables and the builder of labelled datasets."""
