@@ -1,0 +1,1 @@
+"""Blade geometry: measured stations, and the elements that the solver works on."""

@@ -1,0 +1,1 @@
+"""The blade-element momentum solution: compiled kernels under a plain-Python face."""

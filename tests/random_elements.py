@@ -1,0 +1,84 @@
+"""Random blade elements and full-circle polars for the solver's tests: formulas, no data of any section."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from bemt.rotor import kernels as k
+from bemt.rotor.elements import element_bounds
+from bemt.section.full_circle import ANGLES, plate_law
+
+FloatArray = NDArray[np.float64]
+
+LN_REYNOLDS = np.log(np.array([2e4, 1e5, 1e6]))
+TIP_RADIUS = 0.15
+ROOT = 0.095
+
+
+def polar_set(sharp: bool, rng: np.random.Generator, count: int) -> tuple[FloatArray, FloatArray]:
+    """Polars (count, 3, n_alpha, 2) and their bounds; a sharp stall drops within about a degree."""
+    polars = []
+    for _ in range(count):
+        zero = np.radians(rng.uniform(-6, 1))
+        stall = np.radians(rng.uniform(8, 15))
+        slope = rng.uniform(4.5, 6.3)
+        rows = []
+        for _ in range(3):
+            width = np.radians(rng.uniform(0.1, 0.6) if sharp else rng.uniform(3, 5))
+            moved_zero = zero + np.radians(rng.uniform(-0.5, 0.5))
+            moved_stall = stall + np.radians(rng.uniform(-1, 1))
+            separated = 0.5 * (1 + np.tanh((np.abs(ANGLES - moved_zero) - moved_stall) / (2 * width)))
+            plate_lift, plate_drag = plate_law(ANGLES, 1.8, 0.02)
+            lift = (1 - separated) * slope * np.sin(ANGLES - moved_zero) + separated * plate_lift
+            attached = 0.008 + 0.02 * rng.random() + 0.3 * (ANGLES - moved_zero) ** 2
+            log_drag = (1 - separated) * np.log(attached) + separated * np.log(plate_drag)
+            lift[0] = lift[-1]
+            log_drag[0] = log_drag[-1]
+            rows.append(np.stack([lift, log_drag], axis=-1))
+        polars.append(np.stack(rows))
+    stacked = np.array(polars)
+    stall_angles = np.zeros((4, count, 3))
+    stall_angles[[0, 2]] = -0.3
+    stall_angles[[1, 3]] = 0.25
+    return stacked, element_bounds(stacked, stall_angles)
+
+
+def elements(rng: np.random.Generator, count: int, blades: int, n_polars: int) -> FloatArray:
+    """Element columns over the ranges that a blade may have and beyond."""
+    x = rng.uniform(0.1, 0.999, count)
+    chord = rng.uniform(0.02, 0.4, count)
+    columns = np.zeros((count, k.E_COLUMNS))
+    columns[:, k.E_RADIUS] = x * TIP_RADIUS
+    columns[:, k.E_WIDTH] = 0.01
+    columns[:, k.E_CHORD] = chord * TIP_RADIUS
+    columns[:, k.E_TWIST] = np.radians(rng.uniform(-20, 75, count))
+    columns[:, k.E_SOLIDITY] = blades * chord / (2 * np.pi * x)
+    columns[:, k.E_TIP] = np.sqrt(0.5 * blades * (1 - x) / x)
+    columns[:, k.E_ROOT] = np.sqrt(0.5 * blades * (x - ROOT) / ROOT)
+    columns[:, k.E_DIVERGENCE] = 0.75
+    columns[:, k.E_TABLE_BETA] = 1.0
+    columns[:, k.E_LN_RE_LOW] = LN_REYNOLDS[0]
+    columns[:, k.E_LN_RE_HIGH] = LN_REYNOLDS[-1]
+    columns[:, k.E_POLAR] = rng.integers(0, n_polars, count)
+    return columns
+
+
+def solve(points: FloatArray, columns: FloatArray, polars: FloatArray, bounds: FloatArray, blades: int) -> FloatArray:
+    """Radial results (n_points, n_elements, L_COLUMNS) of the kernel itself."""
+    results = np.zeros((points.shape[0], k.R_COLUMNS))
+    radial = np.zeros((points.shape[0], columns.shape[0], k.L_COLUMNS))
+    k.solve_points(
+        points,
+        columns,
+        polars,
+        bounds,
+        LN_REYNOLDS,
+        k.loss_table(),
+        blades,
+        results,
+        radial,
+        np.empty(k.scratch_size(points.shape[0], columns.shape[0])),
+        np.empty(2 * k.LANES, dtype=np.int64),
+    )
+    return radial
