@@ -1,0 +1,438 @@
+"""The envelope against closed forms of level flight, a general-purpose root finder and the registry."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import replace
+
+import numpy as np
+import pytest
+from analytic_propeller import AnalyticPropeller
+from scipy.optimize import brentq
+
+from bemt.air import standard_air
+from bemt.drive import Battery, Controller, Drive, Motor, speed_constant_from_rpm
+from bemt.errors import InputError
+from bemt.flight import (
+    Airframe,
+    Installation,
+    Limits,
+    build_envelope,
+    default_airspeed,
+    default_throttle,
+    describe_limits,
+)
+from bemt.quantities.registry import ENVELOPE, ENVELOPE_WITHOUT_MOTOR, by_name
+
+AIR = standard_air(120.0)
+PROPELLER = AnalyticPropeller()
+MOTOR = Motor(speed_constant_from_rpm(690.0), 0.041, ((10.0, 0.9),), current_limit=42.0)
+CONTROLLER = Controller(on_resistance=0.003, current_limit=50.0, idle_current=0.04)
+BATTERY = Battery(cells_in_series=4, cell_resistance=0.0024, capacity=18_000.0, discharge_multiple=25.0)
+AIRFRAME = Airframe(mass=3.1, wing_area=0.52, cd0=0.034, k=0.052, cl_max=1.3, cruise_speed=16.0)
+INSTALLATION = Installation(inflow_factor=0.97, thrust_factor=0.98)
+PARTS = {
+    "motor": MOTOR,
+    "controller": CONTROLLER,
+    "battery": BATTERY,
+    "airframe": AIRFRAME,
+    "installation": INSTALLATION,
+    "rpm_limit": 9500.0,
+}
+AXES = {"airspeed": np.linspace(0.0, 36.0, 37), "throttle": np.linspace(0.1, 1.0, 10)}
+DRIVE = Drive(PROPELLER, MOTOR, BATTERY, CONTROLLER, AIR, 0.97, 0.98)
+
+
+@pytest.fixture(scope="module")
+def envelope():
+    return build_envelope(PROPELLER, AIR, **PARTS, **AXES)
+
+
+def _full_surplus(airspeed: float) -> float:
+    thrust = float(DRIVE.at_throttle(airspeed, 1.0).thrust)
+    return 0.98 * thrust - float(AIRFRAME.drag(airspeed, AIR.density))
+
+
+# --- airframe ------------------------------------------------------------------------------------------------------
+
+
+def test_least_drag_of_a_parabolic_polar():
+    # Any textbook of aircraft performance, e.g. Anderson, Aircraft Performance and Design: D_min = 2 m g sqrt(k cd0)
+    # at V = sqrt(2 m g/(rho S)) (k/cd0)^(1/4).
+    weight = 3.1 * 9.80665
+    speed = math.sqrt(2.0 * weight / (AIR.density * 0.52)) * (0.052 / 0.034) ** 0.25
+    airspeed = speed + np.linspace(-0.5, 0.5, 1001)
+    drag = AIRFRAME.drag(airspeed, AIR.density)
+    assert drag.min() == pytest.approx(2.0 * weight * math.sqrt(0.052 * 0.034), rel=1e-9)
+    assert airspeed[np.argmin(drag)] == pytest.approx(speed, abs=1e-3)
+
+
+def test_no_drag_of_level_flight_below_the_stall_speed():
+    # At the stall speed the lift coefficient is the largest: q S cl_max = m g.
+    stall = AIRFRAME.stall_speed(AIR.density)
+    assert 0.5 * AIR.density * stall**2 * 0.52 * 1.3 == pytest.approx(3.1 * 9.80665, rel=1e-14)
+    drag = AIRFRAME.drag(np.array([0.0, 0.999 * stall, stall]), AIR.density)
+    np.testing.assert_array_equal(np.isnan(drag), [True, True, False])
+    assert replace(AIRFRAME, cl_max=None).stall_speed(AIR.density) is None
+
+
+def test_drag_table():
+    airframe = Airframe(mass=3.1, drag_table=((9.0, 3.0), (12.0, 2.6), (20.0, 4.6)))
+    np.testing.assert_allclose(airframe.drag([9.0, 10.5, 16.0, 20.0], 1.0), [3.0, 2.8, 3.6, 4.6])
+    assert np.isnan(airframe.drag([8.9, 20.1], 1.0)).all()
+
+
+# --- shape ---------------------------------------------------------------------------------------------------------
+
+
+def test_every_name_and_shape_is_the_registrys(envelope):
+    known = by_name(ENVELOPE)
+    assert set(envelope.values) == set(known)
+    sizes = {"airspeed": 37, "throttle": 10, "point": 6}
+    for name, array in envelope.values.items():
+        assert array.shape == tuple(sizes[dimension] for dimension in known[name].dimensions), name
+    labelled = envelope.to_dataset({"title": "test"})
+    assert labelled["level_rpm"].attrs["units"] == "rpm"
+    assert float(labelled["thrust"].sel(airspeed=10.0, throttle=1.0)) == envelope.values["thrust"][10, -1]
+    assert list(labelled["point"].values) == [
+        "static",
+        "cruise",
+        "best_endurance",
+        "best_range",
+        "best_climb",
+        "top_speed",
+    ]
+    assert "stall speed" in labelled.attrs["notes"]
+
+
+def test_the_grid_is_the_drives(envelope):
+    points = DRIVE.at_throttle(AXES["airspeed"][:, np.newaxis], AXES["throttle"])
+    for name in ("rpm", "thrust", "battery_current", "overall_efficiency"):
+        np.testing.assert_array_equal(envelope.values[name], getattr(points, name))
+
+
+# --- level flight --------------------------------------------------------------------------------------------------
+
+
+def test_thrust_equals_drag_on_the_level_line(envelope):
+    level = envelope.values
+    flies = np.isfinite(level["level_rpm"])
+    stall = AIRFRAME.stall_speed(AIR.density)
+    np.testing.assert_array_equal(flies, (AXES["airspeed"] >= stall) & (AXES["airspeed"] <= _top_speed()))
+    pressure = 0.5 * AIR.density * AXES["airspeed"][flies] ** 2
+    lift_coefficient = 3.1 * 9.80665 / (pressure * 0.52)
+    drag = pressure * 0.52 * (0.034 + 0.052 * lift_coefficient**2)
+    np.testing.assert_allclose(level["drag"][flies], drag, rtol=1e-12)
+    np.testing.assert_allclose(0.98 * level["level_thrust"][flies], drag, rtol=1e-11)
+    loads = PROPELLER.loads(0.97 * AXES["airspeed"][flies], level["level_rpm"][flies], AIR)
+    np.testing.assert_allclose(level["level_thrust"][flies], loads.thrust, rtol=1e-12)
+    assert np.all(level["level_status"][flies] == 1)
+    assert np.all(level["level_status"][~flies] == 0)
+
+
+def test_the_level_throttle_gives_the_level_point(envelope):
+    level = envelope.values
+    flies = np.isfinite(level["level_rpm"])
+    assert np.all((level["level_throttle"][flies] > 0.0) & (level["level_throttle"][flies] <= 1.0))
+    points = DRIVE.at_throttle(AXES["airspeed"][flies], level["level_throttle"][flies])
+    for name in ("rpm", "thrust", "motor_current", "battery_current", "overall_efficiency"):
+        np.testing.assert_allclose(getattr(points, name), level[f"level_{name}"][flies], rtol=1e-9, err_msg=name)
+
+
+def test_endurance_and_range_are_charge_over_current(envelope):
+    level = envelope.values
+    flies = np.isfinite(level["level_rpm"])
+    # Four fifths of 5 A h.
+    np.testing.assert_allclose(level["endurance"][flies] * level["level_battery_current"][flies], 4.0 * 3600.0)
+    np.testing.assert_allclose(level["range"], level["endurance"] * AXES["airspeed"])
+    assert np.isnan(level["endurance"][~flies]).all()
+
+
+def test_climb_rate_is_excess_power_over_weight(envelope):
+    thrust = 0.98 * envelope.values["thrust"][:, -1]
+    power = (thrust - envelope.values["drag"]) * AXES["airspeed"]
+    np.testing.assert_allclose(envelope.values["climb_rate"], power / (3.1 * 9.80665), rtol=1e-12)
+
+
+# --- named points --------------------------------------------------------------------------------------------------
+
+
+def _top_speed() -> float:
+    return brentq(_full_surplus, 20.0, 60.0, xtol=1e-12)
+
+
+def _point(envelope, name: str, quantity: str) -> float:
+    return float(envelope.values[f"point_{quantity}"][envelope.points.index(name)])
+
+
+def test_static_and_top_speed(envelope):
+    still = DRIVE.at_throttle(0.0, 1.0)
+    assert _point(envelope, "static", "thrust") == pytest.approx(float(still.thrust), rel=1e-12)
+    assert _point(envelope, "static", "airspeed") == 0.0
+    assert math.isnan(_point(envelope, "static", "endurance"))
+    top = _top_speed()
+    assert _point(envelope, "top_speed", "airspeed") == pytest.approx(top, rel=1e-10)
+    assert _point(envelope, "top_speed", "throttle") == 1.0
+    assert 0.98 * _point(envelope, "top_speed", "thrust") == pytest.approx(
+        float(AIRFRAME.drag(top, AIR.density)), rel=1e-9
+    )
+
+
+def test_cruise(envelope):
+    assert _point(envelope, "cruise", "airspeed") == 16.0
+    at_16 = envelope.values["level_battery_power"][16]
+    assert _point(envelope, "cruise", "battery_power") == pytest.approx(at_16, rel=1e-10)
+    free = build_envelope(PROPELLER, AIR, **(PARTS | {"airframe": replace(AIRFRAME, cruise_speed=None)}), **AXES)
+    assert _point(free, "cruise", "airspeed") == _point(free, "best_range", "airspeed")
+    slow = build_envelope(PROPELLER, AIR, **(PARTS | {"airframe": replace(AIRFRAME, cruise_speed=5.0)}), **AXES)
+    assert math.isnan(_point(slow, "cruise", "rpm"))
+    assert any("cruise speed of 5.0 m/s" in note for note in slow.notes)
+
+
+def test_best_points_are_the_best_of_a_fine_sampling(envelope):
+    airspeed = np.linspace(AIRFRAME.stall_speed(AIR.density), _top_speed(), 4001)
+    fine = build_envelope(PROPELLER, AIR, **PARTS, airspeed=airspeed, throttle=[1.0]).values
+    for name, quantity in (("best_endurance", "endurance"), ("best_range", "range"), ("best_climb", "climb_rate")):
+        best = np.nanmax(fine[quantity])
+        assert _point(envelope, name, quantity) == pytest.approx(best, rel=1e-6), name
+        where = airspeed[np.nanargmax(fine[quantity])]
+        assert _point(envelope, name, "airspeed") == pytest.approx(where, abs=0.03), name
+
+
+def test_named_points_do_not_depend_on_the_axes(envelope):
+    other = build_envelope(PROPELLER, AIR, **PARTS, airspeed=[3.0, 5.0], throttle=[0.4])
+    for name, array in envelope.values.items():
+        if name.startswith("point_"):
+            np.testing.assert_array_equal(other.values[name], array, err_msg=name)
+
+
+def test_best_range_and_endurance_of_a_constant_efficiency():
+    # With one overall efficiency at every speed an electric aircraft flies farthest at least drag, and longest at least
+    # power, a factor 3^(1/4) slower, where the drag is 2/sqrt(3) of the least (e.g. Traub, Journal of Aircraft 48,
+    # 2011). CP = J CT/0.8 makes the propeller's efficiency 0.8 throughout; the drive has next to no losses.
+    propeller = AnalyticPropeller(diameter=0.6, thrust=(0.1, -0.06, 0.0), power=(0.0, 0.1 / 0.8, -0.06 / 0.8))
+    motor = Motor(speed_constant_from_rpm(400.0), 1e-7, ((10.0, 0.0),))
+    battery = replace(BATTERY, cell_resistance=0.0)
+    airframe = replace(AIRFRAME, cl_max=2.0, cruise_speed=None)
+    found = build_envelope(propeller, AIR, motor=motor, battery=battery, airframe=airframe, airspeed=[0.0, 10.0])
+
+    weight = 3.1 * 9.80665
+    least_drag = 2.0 * weight * math.sqrt(0.034 * 0.052)
+    speed = math.sqrt(2.0 * weight / (AIR.density * 0.52)) * (0.052 / 0.034) ** 0.25
+    energy = 0.8 * battery.usable_charge * battery.open_circuit_voltage
+    assert _point(found, "best_range", "overall_efficiency") == pytest.approx(0.8, rel=1e-6)
+    assert _point(found, "best_range", "range") == pytest.approx(energy / least_drag, rel=1e-5)
+    assert _point(found, "best_range", "airspeed") == pytest.approx(speed, rel=2e-3)
+    slower = speed / 3.0**0.25
+    assert _point(found, "best_endurance", "airspeed") == pytest.approx(slower, rel=2e-3)
+    assert _point(found, "best_endurance", "endurance") == pytest.approx(
+        energy / (2.0 / math.sqrt(3.0) * least_drag * slower), rel=1e-5
+    )
+
+
+def test_too_heavy_to_fly():
+    found = build_envelope(PROPELLER, AIR, **(PARTS | {"airframe": replace(AIRFRAME, mass=60.0)}), **AXES)
+    for name in ("level_rpm", "endurance", "range"):
+        assert np.isnan(found.values[name]).all()
+    assert np.isfinite(_point(found, "static", "thrust"))
+    assert math.isnan(_point(found, "best_climb", "airspeed"))
+    assert any(note.startswith("no level flight:") for note in found.notes)
+
+
+def test_drag_table_that_ends_before_the_top_speed():
+    airframe = Airframe(mass=3.1, drag_table=((9.0, 3.0), (12.0, 2.6), (20.0, 4.6)))
+    found = build_envelope(PROPELLER, AIR, **(PARTS | {"airframe": airframe}), **AXES)
+    assert math.isnan(_point(found, "top_speed", "airspeed"))
+    assert any(note.startswith("top speed not known: thrust exceeds drag up to 20.0 m/s") for note in found.notes)
+    assert 9.0 <= _point(found, "best_range", "airspeed") <= 20.0
+
+
+# --- parts left out ------------------------------------------------------------------------------------------------
+
+
+def test_without_an_airframe(envelope):
+    found = build_envelope(PROPELLER, AIR, **(PARTS | {"airframe": None}), **AXES)
+    assert found.points == ("static",)
+    assert not any(name.startswith("level_") for name in found.values)
+    np.testing.assert_array_equal(found.values["thrust"], envelope.values["thrust"])
+    assert found.to_dataset({}).sizes["point"] == 1
+
+
+def test_without_a_motor():
+    rpm = np.array([3000.0, 6000.0, 9000.0])
+    parts = {"airframe": AIRFRAME, "installation": INSTALLATION, "rpm_limit": 9500.0}
+    found = build_envelope(PROPELLER, AIR, **parts, airspeed=AXES["airspeed"], rpm=rpm)
+    known = by_name(ENVELOPE_WITHOUT_MOTOR)
+    assert set(found.values) == set(known)
+    sizes = {"airspeed": 37, "rpm": 3, "point": 6}
+    for name, array in found.values.items():
+        assert array.shape == tuple(sizes[dimension] for dimension in known[name].dimensions), name
+    assert found.throttle is None
+    loads = PROPELLER.loads(0.97 * AXES["airspeed"][:, np.newaxis], rpm, AIR)
+    np.testing.assert_allclose(found.values["shaft_power"], loads.torque * rpm * math.pi / 30.0, rtol=1e-12)
+    flies = np.isfinite(found.values["level_rpm"])
+    assert flies.sum() > 10
+    np.testing.assert_allclose(0.98 * found.values["level_thrust"][flies], found.values["drag"][flies], rtol=1e-11)
+    np.testing.assert_allclose(found.values["level_rpm_margin"], 9500.0 - found.values["level_rpm"])
+    assert _point(found, "static", "rpm") == pytest.approx(9000.0, rel=1e-14)
+    power = found.values["level_shaft_power"]
+    assert _point(found, "best_endurance", "shaft_power") <= np.nanmin(power)
+    assert found.to_dataset({}).sizes["rpm"] == 3
+
+
+def test_without_a_controller_the_controller_is_ideal():
+    found = build_envelope(PROPELLER, AIR, motor=MOTOR, battery=BATTERY, airframe=AIRFRAME, **AXES)
+    known = found.values["controller_efficiency"][np.isfinite(found.values["controller_efficiency"])]
+    np.testing.assert_allclose(known, 1.0, rtol=1e-12)
+    assert np.isnan(found.values["controller_current_margin"]).all()
+    assert np.isnan(found.values["rpm_margin"]).all()
+
+
+def test_default_axes(envelope):
+    axis = default_airspeed(PROPELLER, AIR, **PARTS)
+    assert axis[0] == 0.0
+    assert axis.size == 61
+    assert 1.1 * _top_speed() <= axis[-1] < 1.1 * _top_speed() + 1.0
+    found = build_envelope(PROPELLER, AIR, **PARTS)
+    np.testing.assert_array_equal(found.airspeed, axis)
+    np.testing.assert_array_equal(found.throttle, default_throttle())
+    np.testing.assert_allclose(default_throttle(), np.arange(2, 21) / 20.0)
+    # Without an airframe: where the thrust at full throttle ends.
+    free = default_airspeed(PROPELLER, AIR, **(PARTS | {"airframe": None}))
+    zero = brentq(lambda airspeed: float(DRIVE.at_throttle(airspeed, 1.0).thrust), 10.0, 80.0)
+    assert 1.1 * zero <= free[-1] < 1.1 * zero + 1.0
+
+
+def test_a_weak_installation_costs_throttle(envelope):
+    free = build_envelope(PROPELLER, AIR, **(PARTS | {"installation": None}), **AXES)
+    worse = build_envelope(PROPELLER, AIR, **(PARTS | {"installation": Installation(1.0, 0.8)}), **AXES)
+    flies = np.isfinite(worse.values["level_throttle"])
+    assert flies.sum() > 10
+    assert np.all(worse.values["level_throttle"][flies] > free.values["level_throttle"][flies])
+    # Four fifths of the thrust arrive, so the propellers give five quarters of the drag.
+    np.testing.assert_allclose(worse.values["level_thrust"][flies], 1.25 * free.values["drag"][flies], rtol=1e-11)
+
+
+# --- limits --------------------------------------------------------------------------------------------------------
+
+
+def test_margins_are_limit_less_value(envelope):
+    values = envelope.values
+    np.testing.assert_allclose(values["rpm_margin"], 9500.0 - values["rpm"])
+    np.testing.assert_allclose(values["motor_current_margin"], 42.0 - values["motor_current"])
+    np.testing.assert_allclose(values["controller_current_margin"], 50.0 - values["motor_current"])
+    np.testing.assert_allclose(values["battery_current_margin"], 125.0 - values["battery_current"])
+    np.testing.assert_allclose(values["level_motor_current_margin"], 42.0 - values["level_motor_current"])
+    np.testing.assert_allclose(values["point_rpm_margin"], 9500.0 - values["point_rpm"])
+
+
+def test_limits_in_words():
+    airspeed, throttle = np.array([0.0, 10.0, 20.0]), np.array([0.0, 0.5, 1.0])
+    values = {
+        "motor_current_margin": np.array([[40.0, 20.0, -20.0], [40.0, 25.0, -10.0], [40.0, 30.0, 10.0]]),
+        "controller_current_margin": np.array([[50.0, 30.0, -10.0], [50.0, 35.0, 0.0], [50.0, 40.0, 20.0]]),
+        "battery_current_margin": np.full((3, 3), 7.0),
+        "rpm_margin": np.array([[5000.0, 3000.0, 100.0], [5000.0, 3000.0, 100.0], [5000.0, 3000.0, -300.0]]),
+        "level_motor_current_margin": np.array([np.nan, 5.0, -5.0]),
+    }
+    motor = (
+        "motor current, limit 42 A: exceeded standing still from throttle 0.75; at full throttle below 15.0 m/s; "
+        "in level flight above 15.0 m/s"
+    )
+    found = describe_limits(Limits(9500.0, 42.0, 50.0, 125.0), airspeed, throttle, values)
+    assert found == (
+        motor,
+        "controller current, limit 50 A: exceeded standing still from throttle 0.88; at full throttle below 10.0 m/s",
+        "propeller rpm, limit 9500 rpm: exceeded at full throttle above 12.5 m/s",
+        "battery current, limit 125 A: not reached, 7 A left at the closest point",
+    )
+    assert describe_limits(Limits(), airspeed, throttle, values) == ()
+
+
+def test_limits_in_words_agree_with_a_root(envelope):
+    binds = brentq(lambda stick: float(DRIVE.at_throttle(0.0, stick).motor_current) - 42.0, 0.1, 1.0)
+    note = next(note for note in envelope.notes if note.startswith("motor current"))
+    assert float(note.split("from throttle ")[1].split(";")[0]) == pytest.approx(binds, abs=0.01)
+
+
+def test_a_dive_beyond_the_battery_voltage_is_said():
+    found = build_envelope(PROPELLER, AIR, **PARTS, airspeed=[0.0, 60.0], throttle=[0.1, 1.0])
+    assert np.all(found.values["motor_voltage"][1] > found.values["battery_voltage"][1])
+    assert any(note.startswith("at 2 points the wind drives the motor above the battery") for note in found.notes)
+
+
+def test_a_winding_that_overheats_is_missing_and_said():
+    hot = replace(MOTOR, thermal_resistance=2.1)
+    found = build_envelope(PROPELLER, AIR, **(PARTS | {"motor": hot}), **AXES)
+    temperature = found.values["winding_temperature"]
+    assert np.isnan(temperature).any()
+    assert np.isfinite(temperature).any()
+    assert not np.isinf(temperature).any()
+    assert any("overheat" in note for note in found.notes)
+
+
+# --- bad input -----------------------------------------------------------------------------------------------------
+
+
+def test_outside_the_propellers_table_is_flagged_and_does_not_stop_the_rest():
+    small = AnalyticPropeller(known_to_rpm=7000.0, known_from_rpm=500.0)
+    found = build_envelope(small, AIR, **PARTS, **AXES)
+    missing = np.isnan(found.values["rpm"])
+    assert missing.any()
+    assert np.all(found.values["status"][missing] == 4)
+    assert any("no equilibrium inside the propeller's table" in note for note in found.notes)
+    whole = build_envelope(PROPELLER, AIR, **PARTS, **AXES).values
+    slow = whole["level_rpm"] < 6000.0
+    np.testing.assert_allclose(found.values["level_rpm"][slow], whole["level_rpm"][slow], rtol=1e-12)
+
+
+@pytest.mark.parametrize(
+    ("field", "change"),
+    [
+        ("battery", {"battery": None}),
+        ("airspeed", {"airspeed": [0.0, 5.0, 4.0]}),
+        ("airspeed", {"airspeed": [-1.0, 5.0]}),
+        ("airspeed", {"airspeed": []}),
+        ("airspeed", {"airspeed": [[0.0, 1.0]]}),
+        ("airspeed", {"airspeed": [0.0, math.nan]}),
+        ("throttle", {"throttle": [0.5, 1.1]}),
+        ("throttle", {"throttle": [0.5, 0.5]}),
+        ("rpm_limit", {"rpm_limit": 0.0}),
+        ("rpm", {"motor": None, "rpm_limit": None}),
+        ("rpm", {"motor": None, "rpm": [0.0, 3000.0]}),
+    ],
+)
+def test_bad_requests_name_the_field(field, change):
+    with pytest.raises(InputError) as caught:
+        build_envelope(PROPELLER, AIR, **(PARTS | AXES | change))
+    assert caught.value.field == field
+
+
+@pytest.mark.parametrize(
+    ("field", "change"),
+    [
+        ("mass", {"mass": 0.0}),
+        ("wing_area", {"wing_area": -0.5}),
+        ("wing_area", {"wing_area": None}),
+        ("cd0", {"cd0": 0.0}),
+        ("k", {"k": -0.01}),
+        ("cl_max", {"cl_max": math.nan}),
+        ("cruise_speed", {"cruise_speed": 0.0}),
+        ("drag", {"cd0": None}),
+        ("drag", {"drag_table": ((9.0, 3.0), (12.0, 2.6))}),
+        ("drag", {"cd0": None, "k": None, "drag_table": ((9.0, 3.0),)}),
+        ("drag.airspeed", {"cd0": None, "k": None, "drag_table": ((9.0, 3.0), (8.0, 2.6))}),
+        ("drag.drag", {"cd0": None, "k": None, "drag_table": ((9.0, 0.0), (12.0, 2.6))}),
+    ],
+)
+def test_bad_airframes_name_the_field(field, change):
+    with pytest.raises(InputError) as caught:
+        replace(AIRFRAME, **change)
+    assert caught.value.field == field
+
+
+@pytest.mark.parametrize("field", ["inflow_factor", "thrust_factor"])
+def test_bad_installations_name_the_field(field):
+    with pytest.raises(InputError) as caught:
+        Installation(**{field: 0.0})
+    assert caught.value.field == field
