@@ -1,0 +1,1 @@
+"""The coefficient table: building it and looking things up in it."""
