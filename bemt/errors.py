@@ -45,7 +45,19 @@ class InputError(BemtError, ValueError):
 
 @dataclass(frozen=True)
 class Complaint:
-    """One thing that is wrong in a file: where it stands and what would fit."""
+    """One thing that is wrong in a file: where it stands and what would fit.
+
+    Parameters
+    ----------
+    file : str
+        As the user named it.
+    line : int or None
+        Counted from 1, where known.
+    field : str
+        Dotted key or column.
+    message : str
+        What is wrong and what would fit.
+    """
 
     file: str
     line: int | None
@@ -59,7 +71,13 @@ class Complaint:
 
 
 class CaseError(BemtError, ValueError):
-    """A case or a data file is wrong; carries every complaint found, not only the first."""
+    """A case or a data file is wrong; carries every complaint found, not only the first.
+
+    Parameters
+    ----------
+    complaints : iterable of Complaint
+        In the order in which they are to be read.
+    """
 
     exit_code = 3
 

@@ -6,7 +6,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from bemt.rotor import kernels as k
-from bemt.rotor.elements import element_bounds
+from bemt.rotor.elements import BladeElements, element_bounds
+from bemt.rotor.solution import solve as rotor_solve
 from bemt.section.full_circle import ANGLES, plate_law
 
 FloatArray = NDArray[np.float64]
@@ -64,21 +65,28 @@ def elements(rng: np.random.Generator, count: int, blades: int, n_polars: int) -
     return columns
 
 
-def solve(points: FloatArray, columns: FloatArray, polars: FloatArray, bounds: FloatArray, blades: int) -> FloatArray:
-    """Radial results (n_points, n_elements, L_COLUMNS) of the kernel itself."""
-    results = np.zeros((points.shape[0], k.R_COLUMNS))
-    radial = np.zeros((points.shape[0], columns.shape[0], k.L_COLUMNS))
-    k.solve_points(
-        points,
-        columns,
-        polars,
-        bounds,
-        LN_REYNOLDS,
-        k.loss_table(),
-        blades,
-        results,
-        radial,
-        np.empty(k.scratch_size(points.shape[0], columns.shape[0])),
-        np.empty(2 * k.LANES, dtype=np.int64),
+def solve(
+    points: FloatArray, columns: FloatArray, polars: FloatArray, bounds: FloatArray, blades: int
+) -> dict[str, FloatArray]:
+    """Radial results (n_points, n_elements) by name."""
+    blade = BladeElements(
+        blades=blades,
+        tip_radius=TIP_RADIUS,
+        chord_75=0.1 * TIP_RADIUS,
+        r_over_R=columns[:, k.E_RADIUS] / TIP_RADIUS,
+        columns=columns,
+        polars=polars,
+        bounds=bounds,
+        ln_reynolds=LN_REYNOLDS,
     )
-    return radial
+    with np.errstate(divide="ignore"):
+        solution = rotor_solve(
+            blade,
+            points[:, k.P_AIRSPEED],
+            points[:, k.P_OMEGA],
+            1 / points[:, k.P_INVERSE_VISCOSITY],
+            1 / points[:, k.P_INVERSE_SOUND],
+            radial=True,
+        )
+    assert solution.radial is not None
+    return dict(solution.radial)

@@ -185,7 +185,7 @@ def direct(name: str, airspeed: Any, rpm: Any, air: Air) -> tuple[np.ndarray, np
 
 
 def test_nodes_are_the_solution(name: str, lookup: Lookup) -> None:
-    # To what the solver's own tolerance leaves open when it starts from another neighbour.
+    # To what the solver leaves open: the Reynolds number lags the local speed by up to 1e-5, worth 1e-6 of the forces.
     rng = np.random.default_rng(3)
     for _ in range(20):
         m, re = rng.integers(1, 4), rng.integers(3, lookup.reynolds.size - 1)
@@ -201,9 +201,9 @@ def test_nodes_are_the_solution(name: str, lookup: Lookup) -> None:
         assert known.any()
         largest = np.nanmax(np.abs(lookup.thrust[m, re, :40])), np.nanmax(np.abs(lookup.torque[m, re, :40]))
         force = 60.0**2 * lookup.diameter**2
-        np.testing.assert_allclose(loads.thrust[known], thrust[known], rtol=0.0, atol=1e-8 * force * largest[0])
+        np.testing.assert_allclose(loads.thrust[known], thrust[known], rtol=0.0, atol=1e-6 * force * largest[0])
         np.testing.assert_allclose(
-            loads.torque[known], torque[known], rtol=0.0, atol=1e-8 * force * lookup.diameter * largest[1]
+            loads.torque[known], torque[known], rtol=0.0, atol=1e-6 * force * lookup.diameter * largest[1]
         )
 
 

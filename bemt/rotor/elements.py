@@ -242,6 +242,8 @@ def element_bounds(polars: FloatArray, stall: FloatArray) -> FloatArray:
     calm = np.where(steep & beyond & (cells < 3 * n_alpha // 4), cells + 1, after[..., None]).max(axis=-1)
     bounds[..., k.B_CALM_FROM] = angles[calm]
     bounds[..., k.B_CALM_FALL] = np.where(cells >= calm[..., None], slower, 0.0).max(axis=-1) / step
+    below_half = (np.arange(n_alpha) >= after[..., None]) & (angles <= 0.25 * np.pi)
+    bounds[..., k.B_PEAK_AT] = angles[np.where(below_half, lift, -np.inf).argmax(axis=-1)]
     bounds[..., k.B_PEAK_LIFT] = np.where(np.arange(n_alpha) >= after[..., None], lift, -np.inf).max(axis=-1)
     bounds[..., k.B_STALL_LOW], bounds[..., k.B_STALL_HIGH] = stall[0], stall[1]
     bounds[..., k.B_DATA_LOW], bounds[..., k.B_DATA_HIGH] = stall[2], stall[3]

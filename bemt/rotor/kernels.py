@@ -84,7 +84,8 @@ B_TROUGH_LIFT = 11  # least lift between them
 B_PEAK_LIFT = 12  # largest lift above the rise
 B_CALM_FROM = 13  # above this angle, well past stall, ...
 B_CALM_FALL = 14  # ... -dcl/dalpha + |dcd/dalpha|/2 is no more than this [1/rad]
-B_COLUMNS = 15
+B_PEAK_AT = 15  # angle of the largest lift above the rise, below 45 deg
+B_COLUMNS = 16
 
 # Columns of the point array.
 P_AIRSPEED = 0  # V at the disk [m/s]
@@ -93,33 +94,26 @@ P_INVERSE_VISCOSITY = 2  # 1 / kinematic viscosity [s/m2]
 P_INVERSE_SOUND = 3  # 1 / speed of sound [s/m]
 P_COLUMNS = 4
 
-# Columns of the result array, per point; forces per unit density.
-R_THRUST = 0  # [m4/s2]
-R_TORQUE = 1  # [m5/s2]
-R_STALLED = 2
-R_OUTSIDE = 3
-R_LOW_RE = 4
-R_STATUS = 5
-R_EVALUATIONS = 6
-R_COLUMNS = 7
-
-# Columns of the radial array, per point and element.
-L_INFLOW = 0
-L_ALPHA = 1
-L_LIFT = 2
-L_DRAG = 3
-L_AXIAL = 4
-L_SWIRL = 5
-L_THRUST = 6
-L_TORQUE = 7
-L_STATUS = 8
-L_SPEED = 9
-L_LOSS = 10
-L_INDUCTION = 11
-L_COLUMNS = 12
+# Rows of the state array, one value a pair of point and element; forces per unit density.
+S_PSI = 0  # phi - phi0 [rad]
+S_SPEED = 1  # W/W0
+S_LIFT = 2
+S_DRAG = 3
+S_X4 = 4  # 4 F |sin phi|
+S_INDUCTION = 5  # axial induction factor where Buhl's law rules, else NaN
+S_STATUS = 6  # 1 to 4; on the way -1 for a root without proof, 0 for none
+S_THRUST = 7  # of the annulus [m4/s2]
+S_TORQUE = 8  # [m5/s2]
+S_STALLED = 9  # 1 where beyond the stall, outside the data, below Re 60 000
+S_OUTSIDE = 10
+S_LOW_RE = 11
+S_EVALUATIONS = 12
+S_LOW = 13  # bracket of a root that has not been reached
+S_HIGH = 14
+S_ROWS = 15
 
 _RESIDUAL_TOLERANCE = 1e-11  # of the sum of the residual's terms
-_SPEED_TOLERANCE = 1e-5  # of W: Reynolds and Mach number lag by no more
+_SPEED_TOLERANCE = 1e-5  # of W: Reynolds and Mach number lag by no more, worth 1e-6 of the forces
 _LOSS_FLOOR = 1e-4
 _FADE_START = math.radians(30.0)
 _FADE_END = math.radians(50.0)
@@ -360,19 +354,18 @@ def _falls_between(alpha_0, near, far, drag_weight, least, polar, row, weight, p
 
 @_jit
 def _clear_beyond_stall(
-    reach, alpha_0, s0, c0, sigma, drag, x4, flat, at, n_alpha, weight, trough_from, trough_to, trough_lift
+    reach, alpha_0, s0, c0, sigma, rise, x4, flat, at, n_alpha, weight, trough_from, trough_to, trough_lift
 ):
     """How far h stays positive from psi = 0 towards `reach`, all of it beyond stall.
 
-    Four intervals, each by the least lift in it, the drag at psi = 0, which is the largest, and the smaller of two
-    bounds of 4 F |sin phi|: that without loss at the ends, and `x4`, its value further out.
+    Interval by interval, each by the least lift in it, the drag at its stalled end, which is the largest, and the
+    smaller of two bounds of 4 F |sin phi|: that without loss at the ends, and `x4`, its value further out.
     """
     scale = (n_alpha - 1) / (2.0 * math.pi)
-    here_0, here_1 = 0.0, 0.0
-    alpha = alpha_0
-    for k in range(5):
-        share = 1.0 if k == 4 else (0.95 if k == 3 else (0.8 if k == 2 else 0.5 * k))
-        angle = share * reach
+    here, here_0, here_1, drag = 0.0, -1.0, -1.0, 0.0
+    width = 0.0
+    for k in range(24):
+        angle = min(here + width, reach)
         place = (alpha_0 - angle + math.pi) * scale
         cell = int(place)
         t = place - cell
@@ -382,15 +375,62 @@ def _clear_beyond_stall(
         there_1 = flat[u] + t * (flat[u + 2] - flat[u])
         if k > 0:
             least = (1.0 - weight) * min(here_0, there_0) + weight * min(here_1, there_1)
-            if alpha >= trough_from and alpha_0 - angle <= trough_to:
+            if alpha_0 - here >= trough_from and alpha_0 - angle <= trough_to:
                 least = min(least, trough_lift)
             # tan x <= x + 0.44 x^3 below 0.78; sin(phi0 + psi) <= s0 + c0 psi
             tangent = angle * (1.0 + 0.44 * angle * angle)
             if least * sigma <= tangent * (sigma * drag + min(4.0 * (s0 + c0 * angle), x4)):
-                return alpha_0 - alpha
-        alpha = alpha_0 - angle
-        here_0, here_1 = there_0, there_1
-    return reach
+                width *= 0.4
+                if width < 0.004:
+                    return here
+                continue
+            if angle >= reach:
+                return reach
+        drag = rise + math.exp(max(max(flat[j + 1], flat[j + 3]), max(flat[u + 1], flat[u + 3])))
+        here, here_0, here_1 = angle, there_0, there_1
+        if k == 0:
+            width = 0.5 * reach
+    return here
+
+
+@_jit
+def _dead_beyond(psi, end, alpha_0, s0, c0, sigma, pg, x4_end, peak, peak_from, peak_to, flat, at, n_alpha, weight):
+    """Whether h stays negative from psi to `end`, lift beyond stall being largest at an interval's ends or its peak.
+
+    Interval by interval, each by the largest lift in it and the least of tan psi X, with the loss at `end` (`x4_end`
+    over sin phi there), which is the strongest, and no drag.
+    """
+    scale = (n_alpha - 1) / (2.0 * math.pi)
+    sine, cosine = _sine_cosine(end)
+    lossy = x4_end / (s0 * cosine + c0 * sine)
+    here, here_0, here_1 = psi, 0.0, 0.0
+    width = 0.0
+    for k in range(24):
+        angle = min(here + width, end)
+        place = (alpha_0 - angle + math.pi) * scale
+        cell = int(place)
+        t = place - cell
+        j = at + 2 * cell
+        u = j + 2 * n_alpha
+        there_0 = flat[j] + t * (flat[j + 2] - flat[j])
+        there_1 = flat[u] + t * (flat[u + 2] - flat[u])
+        if k > 0:
+            most = (1.0 - weight) * max(here_0, there_0) + weight * max(here_1, there_1)
+            if alpha_0 - here >= peak_from and alpha_0 - angle <= peak_to:
+                most = max(most, peak)
+            # tan x >= x; sin(phi0 + psi) >= s0 + (c0 - s0 psi/2) psi - psi^3/6
+            s = s0 + here * (c0 - 0.5 * s0 * here - here * here / 6.0)
+            if pg * most * sigma >= here * lossy * s:
+                width *= 0.4
+                if width < 0.004:
+                    return False
+                continue
+            if angle >= end:
+                return True
+        here, here_0, here_1 = angle, there_0, there_1
+        if k == 0:
+            width = 0.3 * (end - psi)
+    return False
 
 
 @_jit
@@ -442,7 +482,6 @@ def _first_and_alone(
     last = 1 if x4 >= fall * sigma or alpha_0 - psi <= rise_high else 2
     # Beyond stall h must stay positive up to where lift rises again, or nearly to the root and fall from there.
     reach = min(alpha_0 - rise_high, 0.8 * psi)
-    _, drag_0, _, _ = _section(alpha_0, polar, row, weight, pg)
     n_alpha = polar.shape[1]
     clear = _clear_beyond_stall(
         reach,
@@ -450,7 +489,7 @@ def _first_and_alone(
         s0,
         c0,
         sigma,
-        drag_0 + rise,
+        rise,
         x4,
         polar.reshape(-1),
         2 * row * n_alpha,
@@ -593,9 +632,25 @@ def _another_beyond(side, windmill, psi, alpha_0, phi_0, s0, c0, element, polar,
 
 @_jit
 def _follow(
-    windmill, psi, low, high, speed, lift, mach_0, ln_re_0, row, alpha_0, s0, c0, element, polar, ln_reynolds, loss
+    windmill,
+    frozen,
+    psi,
+    low,
+    high,
+    speed,
+    lift,
+    mach_0,
+    ln_re_0,
+    row,
+    alpha_0,
+    s0,
+    c0,
+    element,
+    polar,
+    ln_reynolds,
+    loss,
 ):
-    """Newton steps to the root between two angles while Reynolds and Mach number follow the local speed.
+    """Newton steps to the root between two angles while Reynolds and Mach number follow the local speed, or held.
 
     G falls through the root. The bracket guards each step and is opened, each time by more, when the moving Reynolds
     number has carried the root across an end.
@@ -625,7 +680,7 @@ def _follow(
             value, slope, lift, drag, x4, _, _, scale, now, ln_slope, _, _, _ = _residual(
                 psi, alpha_0, s0, c0, element, polar, row, weight, pg, rise, loss
             )
-        near = abs(now - speed) <= _SPEED_TOLERANCE * speed
+        near = frozen or abs(now - speed) <= _SPEED_TOLERANCE * speed
         if near and abs(value) <= _RESIDUAL_TOLERANCE * scale:
             return True, psi, now, lift, drag, x4, a, row, weight, pg, rise, count + 1
         if value > 0.0:
@@ -643,8 +698,9 @@ def _follow(
         step = psi - value / slope
         if not (slope < 0.0 and inner <= step <= outer):
             step = 0.5 * (inner + outer)
-        ln_move = ln_slope * (step - psi)
-        speed = now * (1.0 + ln_move) if abs(ln_move) < 0.1 else now
+        if not frozen:
+            ln_move = ln_slope * (step - psi)
+            speed = now * (1.0 + ln_move) if abs(ln_move) < 0.1 else now
         psi = step
     return False, psi, speed, lift, drag, x4, a, row, weight, pg, rise, 60
 
@@ -715,6 +771,7 @@ def solve_element(airspeed, turning, element, inverse_viscosity, inverse_sound, 
     psi, speed, lift, drag, x4, a = 0.0, 1.0, 0.0, 0.0, 1.0, math.nan
     side, windmill = 1, False
     done = False
+    attempt = 0
     for attempt in range(12):
         row, weight = _row(ln_re_0 + math.log(frozen), ln_reynolds, row)
         pg, rise = _compressibility(mach_0 * frozen, lift, element)
@@ -728,6 +785,7 @@ def solve_element(airspeed, turning, element, inverse_viscosity, inverse_sound, 
             break
         done, psi, speed, lift, drag, x4, a, row, weight, pg, rise, used = _follow(
             windmill,
+            attempt == 11,
             0.5 * (before + behind),
             min(before, behind),
             max(before, behind),
@@ -752,11 +810,12 @@ def solve_element(airspeed, turning, element, inverse_viscosity, inverse_sound, 
             evaluations += used
             several = several or another
             break
-        # Following has lost the root: a fold. Choose it again at a speed nearer to its own.
+        # Following has lost the root: a fold. Choose it again at a speed nearer to its own; where none settles, the
+        # Reynolds number decides between roots, and the last one is taken at the Reynolds number that chose it.
         frozen += (min(max(speed, 0.05), 2.0) - frozen) * (0.5 if attempt > 2 else 1.0)
         several = True
     induction = math.nan
-    if not done:
+    if not done or (abs(speed - frozen) > 0.2 * frozen and attempt == 11):
         return psi, speed, lift, drag, x4, induction, 4, evaluations
     if windmill and a > 0.4:
         induction = a
@@ -769,8 +828,8 @@ def solve_element(airspeed, turning, element, inverse_viscosity, inverse_sound, 
     return psi, speed, lift, drag, x4, induction, status, evaluations
 
 
-# The batch: rows of the work array, each of LANES values. One flat array at constant offsets, so that the compiler
-# sees that nothing overlaps; look-ups alone in loops of their own.
+# The batch: where each row of the work array starts, LANES values a row. One flat array at constant offsets, so that
+# the compiler sees that nothing overlaps; look-ups alone in loops of their own.
 LANES = 64
 (
     _W_S0,
@@ -819,6 +878,7 @@ LANES = 64
     _W_LIFT_SLOPE,
     _W_DRAG_SLOPE,
     _W_X4_SLOPE,
+    _W_X4_SECOND,
     _W_DONE,
     _W_MOVE,
     _W_AIRSPEED,
@@ -826,7 +886,6 @@ LANES = 64
     _W_TIP_SQUARE,
     _W_LOW,
     _W_HIGH,
-    _W_DRAG_0,
     _W_LIFT_0,
     _W_RISE_LOW,
     _W_FALL_LOW,
@@ -846,24 +905,24 @@ LANES = 64
     _W_THRUST,
     _W_TORQUE,
     _W_RISE_HIGH,
-    _W_ROWS,
-) = range(74)
+    _W_END,
+) = range(0, 74 * LANES, LANES)
 
 
 @_jit
-def _lanes_start(w):
+def _lanes_start(n, w):
     """Undisturbed inflow of every lane from its airspeed and rotation.
 
     phi0 = 8 atan(t) after three halvings of the angle, error below 1e-13; ln W0 from the ratio of its square to the
     tip's, 16 artanh((x^1/8 - 1)/(x^1/8 + 1)), error below 1e-9.
     """
-    for i in range(LANES):
-        airspeed = w[LANES * _W_AIRSPEED + i]
-        turning = w[LANES * _W_TURNING + i]
+    for i in range(n):
+        airspeed = w[_W_AIRSPEED + i]
+        turning = w[_W_TURNING + i]
         square = airspeed * airspeed + turning * turning
         speed = math.sqrt(square)
-        w[LANES * _W_S0 + i] = airspeed / speed
-        w[LANES * _W_C0 + i] = turning / speed
+        w[_W_S0 + i] = airspeed / speed
+        w[_W_C0 + i] = turning / speed
         t = airspeed / (turning + speed)
         t = t / (1.0 + math.sqrt(1.0 + t * t))
         t = t / (1.0 + math.sqrt(1.0 + t * t))
@@ -881,12 +940,12 @@ def _lanes_start(w):
                 )
             )
         )
-        w[LANES * _W_PHI_0 + i] = phi_0
-        w[LANES * _W_ALPHA_0 + i] -= phi_0
-        eighth = math.sqrt(math.sqrt(math.sqrt(square / w[LANES * _W_TIP_SQUARE + i])))
+        w[_W_PHI_0 + i] = phi_0
+        w[_W_ALPHA_0 + i] -= phi_0
+        eighth = math.sqrt(math.sqrt(math.sqrt(square / w[_W_TIP_SQUARE + i])))
         z = (eighth - 1.0) / (eighth + 1.0)
         y = z * z
-        w[LANES * _W_LN_RE_0 + i] += (
+        w[_W_LN_RE_0 + i] += (
             8.0
             * z
             * (
@@ -899,18 +958,18 @@ def _lanes_start(w):
                 )
             )
         )
-        w[LANES * _W_MACH_0 + i] *= speed
-        w[LANES * _W_PSI + i] = 0.0
-        w[LANES * _W_SPEED + i] = 1.0
-        w[LANES * _W_LIFT + i] = 0.0
-        w[LANES * _W_DONE + i] = 0.0
+        w[_W_MACH_0 + i] *= speed
+        w[_W_PSI + i] = 0.0
+        w[_W_SPEED + i] = 1.0
+        w[_W_LIFT + i] = 0.0
+        w[_W_DONE + i] = 0.0
 
 
 @_jit
-def _lanes_flow(w, loss_scale, angle_scale, last):
+def _lanes_flow(n, w, loss_scale, angle_scale, last):
     """Angles, speeds and places in the tables of every lane at its psi and W/W0."""
-    for i in range(LANES):
-        x = w[LANES * _W_PSI + i]
+    for i in range(n):
+        x = w[_W_PSI + i]
         y = x * x
         sine = x * (
             1.0
@@ -949,21 +1008,21 @@ def _lanes_flow(w, loss_scale, angle_scale, last):
                 )
             )
         )
-        s0 = w[LANES * _W_S0 + i]
-        c0 = w[LANES * _W_C0 + i]
+        s0 = w[_W_S0 + i]
+        c0 = w[_W_C0 + i]
         s = s0 * cosine + c0 * sine
-        w[LANES * _W_SINE + i] = sine
-        w[LANES * _W_COSINE + i] = cosine
-        w[LANES * _W_S + i] = s
-        w[LANES * _W_C + i] = c0 * cosine - s0 * sine
+        w[_W_SINE + i] = sine
+        w[_W_COSINE + i] = cosine
+        w[_W_S + i] = s
+        w[_W_C + i] = c0 * cosine - s0 * sine
         inverse_root = loss_scale / math.sqrt(max(abs(s), 1e-15))
-        w[LANES * _W_TIP_X + i] = w[LANES * _W_TIP + i] * inverse_root
-        w[LANES * _W_ROOT_X + i] = w[LANES * _W_ROOT + i] * inverse_root
-        place = (w[LANES * _W_ALPHA_0 + i] - x + math.pi) * angle_scale
-        w[LANES * _W_PLACE + i] = place + last if place < 0.0 else place
-    for i in range(LANES):
+        w[_W_TIP_X + i] = w[_W_TIP + i] * inverse_root
+        w[_W_ROOT_X + i] = w[_W_ROOT + i] * inverse_root
+        place = (w[_W_ALPHA_0 + i] - x + math.pi) * angle_scale
+        w[_W_PLACE + i] = place + last if place < 0.0 else place
+    for i in range(n):
         # ln u = 2 artanh((u - 1)/(u + 1)): absolute error below 1e-7 for u from 0.4 to 2.5, where lanes end up.
-        speed = w[LANES * _W_SPEED + i]
+        speed = w[_W_SPEED + i]
         z = (speed - 1.0) / (speed + 1.0)
         y = z * z
         series = z * (
@@ -974,20 +1033,20 @@ def _lanes_flow(w, loss_scale, angle_scale, last):
                 + y * (1.0 / 5.0 + y * (1.0 / 7.0 + y * (1.0 / 9.0 + y * (1.0 / 11.0 + y * (1.0 / 13.0 + y / 15.0)))))
             )
         )
-        ln_re = w[LANES * _W_LN_RE_0 + i] + 2.0 * series
-        w[LANES * _W_LN_RE + i] = ln_re
-        w[LANES * _W_WEIGHT + i] = (ln_re - w[LANES * _W_LN_RE_ROW + i]) * w[LANES * _W_PER_LN_RE + i]
-        mach = w[LANES * _W_MACH_0 + i] * speed
-        divergence = max(w[LANES * _W_DIVERGENCE + i] - 0.1 * min(abs(w[LANES * _W_LIFT + i]), 2.0), 0.3)
+        ln_re = w[_W_LN_RE_0 + i] + 2.0 * series
+        w[_W_LN_RE + i] = ln_re
+        w[_W_WEIGHT + i] = (ln_re - w[_W_LN_RE_ROW + i]) * w[_W_PER_LN_RE + i]
+        mach = w[_W_MACH_0 + i] * speed
+        divergence = max(w[_W_DIVERGENCE + i] - 0.1 * min(abs(w[_W_LIFT + i]), 2.0), 0.3)
         held = min(mach, divergence)
-        w[LANES * _W_PG + i] = max(w[LANES * _W_BETA + i] / math.sqrt(1.0 - held * held), 1.0)
+        w[_W_PG + i] = max(w[_W_BETA + i] / math.sqrt(1.0 - held * held), 1.0)
         above = max(mach - (divergence - 0.10772173450159418), 0.0)
         square = above * above
-        w[LANES * _W_RISE + i] = min(20.0 * square * square, 0.5)
+        w[_W_RISE + i] = min(20.0 * square * square, 0.5)
 
 
 @_jit
-def _lanes_look_up(w, index, polars, ln_reynolds, loss):
+def _lanes_look_up(n, w, index, polars, ln_reynolds, loss):
     """Loss factor and the cell of the polar of every lane. Unsigned indices need no test for negative ones."""
     n_alpha = polars.shape[2]
     flat = polars.reshape(-1)
@@ -996,8 +1055,8 @@ def _lanes_look_up(w, index, polars, ln_reynolds, loss):
     last_cell = float(n_alpha - 2)
     one, two, three, five = np.uint64(1), np.uint64(2), np.uint64(3), np.uint64(5)
     to_next_row = np.uint64(2 * n_alpha)
-    for i in range(LANES):
-        place = w[LANES * _W_TIP_X + i]
+    for i in range(n):
+        place = w[_W_TIP_X + i]
         value, step = 1.0, 0.0
         if place < end:
             cell = np.int64(place)
@@ -1006,10 +1065,10 @@ def _lanes_look_up(w, index, polars, ln_reynolds, loss):
             c1, c2, c3 = cells[at + one], cells[at + two], cells[at + three]
             value = cells[at] + t * (c1 + t * (c2 + t * c3))
             step = c1 + t * (2.0 * c2 + t * 3.0 * c3)
-        w[LANES * _W_TIP_LOSS + i] = value
-        w[LANES * _W_TIP_STEP + i] = step
-    for i in range(LANES):
-        place = w[LANES * _W_ROOT_X + i]
+        w[_W_TIP_LOSS + i] = value
+        w[_W_TIP_STEP + i] = step
+    for i in range(n):
+        place = w[_W_ROOT_X + i]
         value, step = 1.0, 0.0
         if place < end:
             cell = np.int64(place)
@@ -1018,39 +1077,39 @@ def _lanes_look_up(w, index, polars, ln_reynolds, loss):
             c1, c2, c3 = cells[at + one], cells[at + two], cells[at + three]
             value = cells[at] + t * (c1 + t * (c2 + t * c3))
             step = c1 + t * (2.0 * c2 + t * 3.0 * c3)
-        w[LANES * _W_ROOT_LOSS + i] = value
-        w[LANES * _W_ROOT_STEP + i] = step
-    for i in range(LANES):
-        weight = w[LANES * _W_WEIGHT + i]
+        w[_W_ROOT_LOSS + i] = value
+        w[_W_ROOT_STEP + i] = step
+    for i in range(n):
+        weight = w[_W_WEIGHT + i]
         if weight < 0.0 or weight > 1.0:
-            row, weight = _row(w[LANES * _W_LN_RE + i], ln_reynolds, index[LANES + i])
+            row, weight = _row(w[_W_LN_RE + i], ln_reynolds, index[LANES + i])
             index[LANES + i] = row
-            w[LANES * _W_WEIGHT + i] = weight
-            w[LANES * _W_LN_RE_ROW + i] = ln_reynolds[row]
-            w[LANES * _W_PER_LN_RE + i] = 1.0 / (ln_reynolds[row + 1] - ln_reynolds[row])
+            w[_W_WEIGHT + i] = weight
+            w[_W_LN_RE_ROW + i] = ln_reynolds[row]
+            w[_W_PER_LN_RE + i] = 1.0 / (ln_reynolds[row + 1] - ln_reynolds[row])
         row = index[LANES + i]
-        place = min(w[LANES * _W_PLACE + i], last_cell + 0.999999999)
+        place = min(w[_W_PLACE + i], last_cell + 0.999999999)
         cell = np.int64(place)
         at = np.uint64(2 * ((index[i] * polars.shape[1] + row) * n_alpha + cell))
         up = at + to_next_row
         left = flat[at] + weight * (flat[up] - flat[at])
         log_left = flat[at + one] + weight * (flat[up + one] - flat[at + one])
-        w[LANES * _W_LIFT_LEFT + i] = left
-        w[LANES * _W_LOG_LEFT + i] = log_left
-        w[LANES * _W_LIFT_STEP + i] = flat[at + two] + weight * (flat[up + two] - flat[at + two]) - left
-        w[LANES * _W_LOG_STEP + i] = flat[at + three] + weight * (flat[up + three] - flat[at + three]) - log_left
-        w[LANES * _W_CELL_SHARE + i] = place - cell
+        w[_W_LIFT_LEFT + i] = left
+        w[_W_LOG_LEFT + i] = log_left
+        w[_W_LIFT_STEP + i] = flat[at + two] + weight * (flat[up + two] - flat[at + two]) - left
+        w[_W_LOG_STEP + i] = flat[at + three] + weight * (flat[up + three] - flat[at + three]) - log_left
+        w[_W_CELL_SHARE + i] = place - cell
 
 
 @_jit
-def _lanes_residual(w, angle_scale):
+def _lanes_residual(n, w, angle_scale):
     """`_residual` for every lane."""
-    for i in range(LANES):
-        t = w[LANES * _W_CELL_SHARE + i]
-        lift = w[LANES * _W_LIFT_LEFT + i] + t * w[LANES * _W_LIFT_STEP + i]
-        lift_slope = w[LANES * _W_LIFT_STEP + i] * angle_scale
+    for i in range(n):
+        t = w[_W_CELL_SHARE + i]
+        lift = w[_W_LIFT_LEFT + i] + t * w[_W_LIFT_STEP + i]
+        lift_slope = w[_W_LIFT_STEP + i] * angle_scale
         # exp(x) = exp(x/64)^64: Taylor to the 8th order, relative error below 1e-12 for drag from 0.001 to 5.
-        x = (w[LANES * _W_LOG_LEFT + i] + t * w[LANES * _W_LOG_STEP + i]) * (1.0 / 64.0)
+        x = (w[_W_LOG_LEFT + i] + t * w[_W_LOG_STEP + i]) * (1.0 / 64.0)
         e = 1.0 + x * (
             1.0
             + x
@@ -1069,374 +1128,470 @@ def _lanes_residual(w, angle_scale):
         e = e * e
         e = e * e
         drag = e * e
-        drag_slope = drag * w[LANES * _W_LOG_STEP + i] * angle_scale
-        drag += w[LANES * _W_RISE + i]
-        alpha = w[LANES * _W_ALPHA_0 + i] - w[LANES * _W_PSI + i]
-        gain = w[LANES * _W_PG + i] - 1.0
+        drag_slope = drag * w[_W_LOG_STEP + i] * angle_scale
+        drag += w[_W_RISE + i]
+        alpha = w[_W_ALPHA_0 + i] - w[_W_PSI + i]
+        gain = w[_W_PG + i] - 1.0
         ramp = (_FADE_END - abs(alpha)) * (1.0 / (_FADE_END - _FADE_START))
         fade = min(max(ramp, 0.0), 1.0)
         ramp_slope = -math.copysign(1.0 / (_FADE_END - _FADE_START), alpha)
         fade_slope = ramp_slope if 0.0 < ramp < 1.0 else 0.0
         lift_slope = lift_slope * (1.0 + gain * fade) + lift * gain * fade_slope
         lift *= 1.0 + gain * fade
-        sigma = w[LANES * _W_SIGMA + i]
-        sine = w[LANES * _W_SINE + i]
-        cosine = w[LANES * _W_COSINE + i]
-        s = w[LANES * _W_S + i]
-        c = w[LANES * _W_C + i]
-        tip = w[LANES * _W_TIP_LOSS + i]
-        root = w[LANES * _W_ROOT_LOSS + i]
+        sigma = w[_W_SIGMA + i]
+        sine = w[_W_SINE + i]
+        cosine = w[_W_COSINE + i]
+        s = w[_W_S + i]
+        c = w[_W_C + i]
+        tip = w[_W_TIP_LOSS + i]
+        root = w[_W_ROOT_LOSS + i]
         factor = tip * root
         # d ln F / d ln |s|, since both places go as |s|^-1/2
         steep = (
             -0.5
-            * (
-                w[LANES * _W_TIP_X + i] * w[LANES * _W_TIP_STEP + i] * root
-                + w[LANES * _W_ROOT_X + i] * w[LANES * _W_ROOT_STEP + i] * tip
-            )
+            * (w[_W_TIP_X + i] * w[_W_TIP_STEP + i] * root + w[_W_ROOT_X + i] * w[_W_ROOT_STEP + i] * tip)
             / max(factor, _LOSS_FLOOR)
         )
         steep = steep if factor > _LOSS_FLOOR else 0.0
         factor = 4.0 * max(factor, _LOSS_FLOOR)
         x4 = factor * abs(s)
         x4_slope = factor * (1.0 + steep) * (c if s > 0.0 else -c)
-        w[LANES * _W_VALUE + i] = sigma * (lift * cosine - drag * sine) - x4 * sine
-        w[LANES * _W_SLOPE + i] = (
+        w[_W_VALUE + i] = sigma * (lift * cosine - drag * sine) - x4 * sine
+        w[_W_SLOPE + i] = (
             sigma * (drag_slope * sine - lift_slope * cosine - lift * sine - drag * cosine)
             - x4_slope * sine
             - x4 * cosine
         )
-        w[LANES * _W_SCALE + i] = sigma * (abs(lift * cosine) + drag) + x4 * abs(sine)
+        w[_W_SCALE + i] = sigma * (abs(lift * cosine) + drag) + x4 * abs(sine)
         inverse = 1.0 / max(x4, 1e-300)
         brake = sigma * drag * inverse
         both = 1.0 / (cosine * (1.0 + brake))
-        w[LANES * _W_NOW + i] = cosine * cosine * both
-        w[LANES * _W_LN_SLOPE + i] = both * (
-            cosine * (sigma * drag_slope + brake * x4_slope) * inverse - sine * (1.0 + brake)
-        )
-        w[LANES * _W_LIFT + i] = lift
-        w[LANES * _W_DRAG + i] = drag
-        w[LANES * _W_X4 + i] = x4
-        w[LANES * _W_LIFT_SLOPE + i] = -lift_slope
-        w[LANES * _W_DRAG_SLOPE + i] = -drag_slope
-        w[LANES * _W_X4_SLOPE + i] = x4_slope
+        w[_W_NOW + i] = cosine * cosine * both
+        w[_W_LN_SLOPE + i] = both * (cosine * (sigma * drag_slope + brake * x4_slope) * inverse - sine * (1.0 + brake))
+        w[_W_LIFT + i] = lift
+        w[_W_DRAG + i] = drag
+        w[_W_X4 + i] = x4
+        w[_W_LIFT_SLOPE + i] = -lift_slope
+        w[_W_DRAG_SLOPE + i] = -drag_slope
+        w[_W_X4_SLOPE + i] = x4_slope
 
 
 @_jit
-def _lanes_guess(w, index, polars, bounds, ln_reynolds, angle_scale, last):
+def _lanes_guess(n, w, index, polars, bounds, ln_reynolds, angle_scale, last):
     """Start of every lane from its unloaded state.
 
     The quadratic in psi that h is for small angles; from beyond stall, the angle at which the lift rises again, which
     parts a stalled root from an attached one.
     """
-    for i in range(LANES):
-        place = (w[LANES * _W_ALPHA_0 + i] + math.pi) * angle_scale
-        w[LANES * _W_PLACE + i] = min(place + last if place < 0.0 else place, last - 1e-9)
+    for i in range(n):
+        place = (w[_W_ALPHA_0 + i] + math.pi) * angle_scale
+        w[_W_PLACE + i] = min(place + last if place < 0.0 else place, last - 1e-9)
     n_alpha = polars.shape[2]
     flat = polars.reshape(-1)
-    one, two, three = np.uint64(1), np.uint64(2), np.uint64(3)
+    two = np.uint64(2)
     to_next_row = np.uint64(2 * n_alpha)
-    for i in range(LANES):
-        row, weight = _row(w[LANES * _W_LN_RE_0 + i], ln_reynolds, index[LANES + i])
+    for i in range(n):
+        row, weight = _row(w[_W_LN_RE_0 + i], ln_reynolds, index[LANES + i])
         index[LANES + i] = row
-        w[LANES * _W_LN_RE_ROW + i] = ln_reynolds[row]
-        w[LANES * _W_PER_LN_RE + i] = 1.0 / (ln_reynolds[row + 1] - ln_reynolds[row])
-        place = w[LANES * _W_PLACE + i]
+        w[_W_LN_RE_ROW + i] = ln_reynolds[row]
+        w[_W_PER_LN_RE + i] = 1.0 / (ln_reynolds[row + 1] - ln_reynolds[row])
+        place = w[_W_PLACE + i]
         cell = np.int64(place)
         at = np.uint64(2 * ((index[i] * polars.shape[1] + row) * n_alpha + cell))
         up = at + to_next_row
         left = flat[at] + weight * (flat[up] - flat[at])
-        w[LANES * _W_LIFT_LEFT + i] = left
-        w[LANES * _W_LIFT_STEP + i] = flat[at + two] + weight * (flat[up + two] - flat[at + two]) - left
-        w[LANES * _W_LOG_LEFT + i] = max(max(flat[at + one], flat[up + one]), max(flat[at + three], flat[up + three]))
-        w[LANES * _W_CELL_SHARE + i] = place - cell
+        w[_W_LIFT_LEFT + i] = left
+        w[_W_LIFT_STEP + i] = flat[at + two] + weight * (flat[up + two] - flat[at + two]) - left
+        w[_W_CELL_SHARE + i] = place - cell
         bound = index[i]
-        w[LANES * _W_RISE_HIGH + i] = min(bounds[bound, row, B_RISE_HIGH], bounds[bound, row + 1, B_RISE_HIGH])
-    for i in range(LANES):
-        sigma = w[LANES * _W_SIGMA + i]
-        lift = w[LANES * _W_LIFT_LEFT + i] + w[LANES * _W_CELL_SHARE + i] * w[LANES * _W_LIFT_STEP + i]
-        climb = max(w[LANES * _W_LIFT_STEP + i] * angle_scale, 0.0)
-        x = w[LANES * _W_LOG_LEFT + i] * 0.125
-        drag = 1.0 + x * (1.0 + x * (0.5 + x * (1.0 / 6.0 + x * (1.0 / 24.0 + x * (1.0 / 120.0 + x / 720.0)))))
-        drag *= drag
-        drag *= drag
-        drag = 1.001 * drag * drag  # an upper bound: the largest of the cell's four nodes, error of exp included
-        w[LANES * _W_LIFT + i] = lift
-        w[LANES * _W_LIFT_0 + i] = lift
-        w[LANES * _W_DRAG_0 + i] = drag
-        s0 = w[LANES * _W_S0 + i]
-        c0 = w[LANES * _W_C0 + i]
+        w[_W_RISE_HIGH + i] = min(bounds[bound, row, B_RISE_HIGH], bounds[bound, row + 1, B_RISE_HIGH])
+    for i in range(n):
+        sigma = w[_W_SIGMA + i]
+        lift = w[_W_LIFT_LEFT + i] + w[_W_CELL_SHARE + i] * w[_W_LIFT_STEP + i]
+        climb = max(w[_W_LIFT_STEP + i] * angle_scale, 0.0)
+        w[_W_LIFT + i] = lift
+        w[_W_LIFT_0 + i] = lift
+        s0 = w[_W_S0 + i]
+        c0 = w[_W_C0 + i]
         # Loss at an inflow angle turned by a third of the lift's share, roughly: x (0.9 - 0.14 x^2 + 0.015 x^4).
         turned = s0 + c0 * min(0.1 * abs(lift), 0.12)
         inverse = 1.0 / turned
-        tip = min(w[LANES * _W_TIP + i] * math.sqrt(inverse), 1.6)
-        root = min(w[LANES * _W_ROOT + i] * math.sqrt(inverse), 1.6)
+        tip = min(w[_W_TIP + i] * math.sqrt(inverse), 1.6)
+        root = min(w[_W_ROOT + i] * math.sqrt(inverse), 1.6)
         tip_square = tip * tip
         root_square = root * root
         loss = min(tip * (0.9 - tip_square * (0.14 - 0.015 * tip_square)), 1.0)
         loss *= min(root * (0.9 - root_square * (0.14 - 0.015 * root_square)), 1.0)
         x4 = 4.0 * loss * s0
-        b = sigma * (climb + min(drag, 0.1)) + x4
+        stalled = w[_W_ALPHA_0 + i] - w[_W_RISE_HIGH + i]
+        b = sigma * (climb + (0.1 if stalled > 0.0 else 0.03)) + x4
         q = 4.0 * loss * c0 if lift > 0.0 else 0.0
         psi = 2.0 * sigma * lift / (b + math.sqrt(b * b + 4.0 * max(q * sigma * lift, 0.0)))
-        stalled = w[LANES * _W_ALPHA_0 + i] - w[LANES * _W_RISE_HIGH + i]
         psi = stalled if lift > 0.0 and psi < stalled < 0.7 and x4 < 10.0 * sigma else psi
-        w[LANES * _W_PSI + i] = min(max(psi, -0.7), 0.7)
-        w[LANES * _W_SPEED + i] = max(1.0 - 0.5 * psi * psi, 0.75)
-        w[LANES * _W_LOW + i] = 0.0 if lift > 0.0 else -0.78
-        w[LANES * _W_HIGH + i] = 0.78 if lift > 0.0 else 0.0
+        w[_W_PSI + i] = min(max(psi, -0.7), 0.7)
+        w[_W_SPEED + i] = max(1.0 - 0.5 * psi * psi, 0.75)
+        w[_W_LOW + i] = 0.0 if lift > 0.0 else -0.78
+        w[_W_HIGH + i] = 0.78 if lift > 0.0 else 0.0
 
 
 @_jit
-def _lanes_step(w):
+def _lanes_step(n, w):
     """Halt the lanes that have arrived, move the others by a guarded Newton step; returns how many have arrived.
 
-    A lane that has arrived stays where it is, and MOVE tells the last step, too small to be worth an evaluation:
-    within a cell of the polar the curvature left out is of the order of its square, below the tolerance.
+    Steps are of second order: G'' from lift linear and drag exponential within a cell of the polar, and from
+    4 F |sin phi| as a power of |sin phi|. A lane that has arrived stays where it is, and MOVE tells the last step, too
+    small to be worth an evaluation: what it leaves out is of the order of its cube, below the tolerance.
     """
     arrived = 0.0
-    for i in range(LANES):
-        psi = w[LANES * _W_PSI + i]
-        speed = w[LANES * _W_SPEED + i]
-        now = w[LANES * _W_NOW + i]
-        value = w[LANES * _W_VALUE + i]
-        slope = w[LANES * _W_SLOPE + i]
+    for i in range(n):
+        psi = w[_W_PSI + i]
+        speed = w[_W_SPEED + i]
+        now = w[_W_NOW + i]
+        value = w[_W_VALUE + i]
+        slope = w[_W_SLOPE + i]
         # Negative where the lift rises again: the root is a stalled one, and the slope says nothing about it.
-        unloaded = w[LANES * _W_SIGMA + i] * w[LANES * _W_LIFT_0 + i]
-        marker = abs(psi - (w[LANES * _W_ALPHA_0 + i] - w[LANES * _W_RISE_HIGH + i])) < 1e-12 and value < 0.0 < unloaded
-        move = (psi * value if marker else -value) / (unloaded - value if marker else slope)
+        unloaded = w[_W_SIGMA + i] * w[_W_LIFT_0 + i]
+        marker = abs(psi - (w[_W_ALPHA_0 + i] - w[_W_RISE_HIGH + i])) < 1e-12 and value < 0.0 < unloaded
+        inverse = 1.0 / (unloaded - value if marker else slope)
+        move = (psi * value if marker else -value) * inverse
+        s = w[_W_S + i]
+        x4 = max(w[_W_X4 + i], 1e-12)
+        x4_slope = w[_W_X4_SLOPE + i]
+        c = w[_W_C + i]
+        drag = w[_W_DRAG + i]
+        # One division for four reciprocals.
+        s_c, x4_drag = (s + 1e-12) * (c + 1e-12), x4 * drag
+        q = 1.0 / (s_c * x4_drag)
+        tilt = c * q * (c + 1e-12) * x4_drag
+        per_x4 = x4_slope * q * drag * s_c
+        # d ln X / d psi = p cot phi, so X'' = X ((p cot phi)^2 - p cot^2 phi - p), and p = d ln X/d psi tan phi
+        x4_second = x4 * (per_x4 * per_x4 - per_x4 * tilt) - x4_slope * s * q * (s + 1e-12) * x4_drag
+        drag_slope = w[_W_DRAG_SLOPE + i]
+        drag_second = drag_slope * drag_slope * q * s_c * x4
+        sine = w[_W_SINE + i]
+        cosine = w[_W_COSINE + i]
+        second = (
+            w[_W_SIGMA + i]
+            * (
+                -2.0 * w[_W_LIFT_SLOPE + i] * sine
+                - w[_W_LIFT + i] * cosine
+                - drag_second * sine
+                - 2.0 * drag_slope * cosine
+                + drag * sine
+            )
+            - x4_second * sine
+            - 2.0 * x4_slope * cosine
+            + x4 * sine
+        )
+        bend = 0.5 * second * move * inverse
+        move *= 1.0 - min(max(bend, -0.3), 0.3) if not marker else 1.0
         near = abs(now - speed) <= _SPEED_TOLERANCE * speed
-        closed = near and abs(value) <= _RESIDUAL_TOLERANCE * w[LANES * _W_SCALE + i]
-        share = w[LANES * _W_CELL_SHARE + i]
-        tiny = min(3e-7, 1e-6 * abs(w[LANES * _W_S + i]))
-        closing = near and abs(move) < tiny and slope < 0.0 and 1e-4 < share < 1.0 - 1e-4
+        closed = near and abs(value) <= _RESIDUAL_TOLERANCE * w[_W_SCALE + i]
+        share = w[_W_CELL_SHARE + i]
+        tiny = min(1e-5, 3e-5 * abs(s))
+        closing = near and abs(move) < tiny and slope < 0.0 and 2e-3 < share < 1.0 - 2e-3
+        w[_W_X4_SECOND + i] = x4_second
         done = closed or closing
-        w[LANES * _W_DONE + i] = 1.0 if done else 0.0
-        w[LANES * _W_MOVE + i] = move if closing and not closed else 0.0
+        w[_W_DONE + i] = 1.0 if done else 0.0
+        w[_W_MOVE + i] = move if closing and not closed else 0.0
         arrived += 1.0 if done else 0.0
         # G falls through the root. The slack leaves the last steps to Newton while the Reynolds number still moves.
-        low = psi if value > 0.0 else w[LANES * _W_LOW + i]
-        high = w[LANES * _W_HIGH + i] if value > 0.0 else psi
-        w[LANES * _W_LOW + i] = low
-        w[LANES * _W_HIGH + i] = high
+        low = psi if value > 0.0 else w[_W_LOW + i]
+        high = w[_W_HIGH + i] if value > 0.0 else psi
+        w[_W_LOW + i] = low
+        w[_W_HIGH + i] = high
         step = psi + move
         step = step if low - 1e-5 < step < high + 1e-5 else 0.5 * (low + high)
-        change = 1.0 + w[LANES * _W_LN_SLOPE + i] * (step - psi)
-        w[LANES * _W_PSI + i] = psi if done else step
+        change = 1.0 + w[_W_LN_SLOPE + i] * (step - psi)
+        w[_W_PSI + i] = psi if done else step
         moved = min(max(now * min(max(change, 0.9), 1.1), 0.05), 2.0)
-        w[LANES * _W_SPEED + i] = speed if done else moved
+        w[_W_SPEED + i] = speed if done else moved
     return arrived
 
 
 @_jit
-def _lanes_finish(w, index, bounds):
+def _lanes_finish(n, w, index, bounds):
     """Last step, forces and validity of every lane, and whether its root is plainly the first one.
 
-    Plainly: the cheap part of `_first_and_alone`, that lift rises all the way or X outweighs its steepest fall.
+    Plainly: the cheap part of `_first_and_alone`, that lift rises all the way or X outweighs its steepest fall. PLAIN
+    becomes the status: 1 plainly, -1 a root without proof, 0 none yet.
     """
     flat = bounds.reshape(-1)
     columns = np.uint64(B_COLUMNS)
-    for i in range(LANES):
+    for i in range(n):
         at = np.uint64((index[i] * bounds.shape[1] + index[LANES + i]) * B_COLUMNS)
         up = at + columns
-        weight = w[LANES * _W_WEIGHT + i]
-        w[LANES * _W_RISE_LOW + i] = max(flat[at + np.uint64(B_RISE_LOW)], flat[up + np.uint64(B_RISE_LOW)])
-        w[LANES * _W_RISE_HIGH + i] = min(flat[at + np.uint64(B_RISE_HIGH)], flat[up + np.uint64(B_RISE_HIGH)])
-        w[LANES * _W_FALL_LOW + i] = max(flat[at + np.uint64(B_FALL_LOW)], flat[up + np.uint64(B_FALL_LOW)])
-        w[LANES * _W_FALL_HIGH + i] = max(flat[at + np.uint64(B_FALL_HIGH)], flat[up + np.uint64(B_FALL_HIGH)])
+        weight = w[_W_WEIGHT + i]
+        w[_W_RISE_LOW + i] = max(flat[at + np.uint64(B_RISE_LOW)], flat[up + np.uint64(B_RISE_LOW)])
+        w[_W_RISE_HIGH + i] = min(flat[at + np.uint64(B_RISE_HIGH)], flat[up + np.uint64(B_RISE_HIGH)])
+        w[_W_FALL_LOW + i] = max(flat[at + np.uint64(B_FALL_LOW)], flat[up + np.uint64(B_FALL_LOW)])
+        w[_W_FALL_HIGH + i] = max(flat[at + np.uint64(B_FALL_HIGH)], flat[up + np.uint64(B_FALL_HIGH)])
         left = flat[at + np.uint64(B_STALL_LOW)]
-        w[LANES * _W_STALL_LOW + i] = left + weight * (flat[up + np.uint64(B_STALL_LOW)] - left)
+        w[_W_STALL_LOW + i] = left + weight * (flat[up + np.uint64(B_STALL_LOW)] - left)
         left = flat[at + np.uint64(B_STALL_HIGH)]
-        w[LANES * _W_STALL_HIGH + i] = left + weight * (flat[up + np.uint64(B_STALL_HIGH)] - left)
+        w[_W_STALL_HIGH + i] = left + weight * (flat[up + np.uint64(B_STALL_HIGH)] - left)
         left = flat[at + np.uint64(B_DATA_LOW)]
-        w[LANES * _W_DATA_LOW + i] = left + weight * (flat[up + np.uint64(B_DATA_LOW)] - left)
+        w[_W_DATA_LOW + i] = left + weight * (flat[up + np.uint64(B_DATA_LOW)] - left)
         left = flat[at + np.uint64(B_DATA_HIGH)]
-        w[LANES * _W_DATA_HIGH + i] = left + weight * (flat[up + np.uint64(B_DATA_HIGH)] - left)
-    for i in range(LANES):
-        move = w[LANES * _W_MOVE + i]
-        psi = w[LANES * _W_PSI + i] + move
-        lift = w[LANES * _W_LIFT + i] + w[LANES * _W_LIFT_SLOPE + i] * move
-        drag = w[LANES * _W_DRAG + i] + w[LANES * _W_DRAG_SLOPE + i] * move
-        x4 = w[LANES * _W_X4 + i] + w[LANES * _W_X4_SLOPE + i] * move
-        ratio = w[LANES * _W_NOW + i] * (1.0 + w[LANES * _W_LN_SLOPE + i] * move)
-        s = w[LANES * _W_S + i] + w[LANES * _W_C + i] * move
-        c = w[LANES * _W_C + i] - w[LANES * _W_S + i] * move
-        w[LANES * _W_PSI + i] = psi
-        w[LANES * _W_LIFT + i] = lift
-        w[LANES * _W_DRAG + i] = drag
-        w[LANES * _W_X4 + i] = x4
-        w[LANES * _W_NOW + i] = ratio
-        w[LANES * _W_S + i] = s
-        w[LANES * _W_C + i] = c
-        sigma = w[LANES * _W_SIGMA + i]
-        alpha_0 = w[LANES * _W_ALPHA_0 + i]
+        w[_W_DATA_HIGH + i] = left + weight * (flat[up + np.uint64(B_DATA_HIGH)] - left)
+    for i in range(n):
+        move = w[_W_MOVE + i]
+        psi = w[_W_PSI + i] + move
+        lift = w[_W_LIFT + i] + w[_W_LIFT_SLOPE + i] * move
+        drag = w[_W_DRAG + i]
+        drag += w[_W_DRAG_SLOPE + i] * move * (1.0 + 0.5 * w[_W_DRAG_SLOPE + i] * move / drag)
+        x4 = w[_W_X4 + i] + move * (w[_W_X4_SLOPE + i] + 0.5 * move * w[_W_X4_SECOND + i])
+        half = 0.5 * move * move
+        s = w[_W_S + i] + w[_W_C + i] * move - w[_W_S + i] * half
+        c = w[_W_C + i] - w[_W_S + i] * move - w[_W_C + i] * half
+        cosine = w[_W_COSINE + i] - w[_W_SINE + i] * move - w[_W_COSINE + i] * half
+        ratio = cosine / (1.0 + w[_W_SIGMA + i] * drag / max(x4, 1e-300))
+        w[_W_PSI + i] = psi
+        w[_W_LIFT + i] = lift
+        w[_W_DRAG + i] = drag
+        w[_W_X4 + i] = x4
+        w[_W_NOW + i] = ratio
+        w[_W_S + i] = s
+        w[_W_C + i] = c
+        sigma = w[_W_SIGMA + i]
+        alpha_0 = w[_W_ALPHA_0 + i]
         alpha = alpha_0 - psi
-        pg = w[LANES * _W_PG + i]
+        pg = w[_W_PG + i]
         normal = lift * c - drag * s
-        sound = w[LANES * _W_DONE + i] == 1.0 and s > 0.0 and c > 0.0 and abs(psi) < 0.78
+        sound = w[_W_DONE + i] == 1.0 and s > 0.0 and c > 0.0 and abs(psi) < 0.78
         sound = sound and -sigma * normal <= 2.0 / 3.0 * x4 * s
-        above = alpha_0 >= w[LANES * _W_RISE_LOW + i]
+        above = alpha_0 >= w[_W_RISE_LOW + i]
         gain = 4.0 * (pg - 1.0)
-        fall_high = w[LANES * _W_FALL_HIGH + i]
+        fall_high = w[_W_FALL_HIGH + i]
         # F falls as |sin phi| grows: X at psi = 0 is no less than X sin phi0 / sin phi.
-        ahead = above and (
-            alpha_0 <= w[LANES * _W_RISE_HIGH + i] or x4 * w[LANES * _W_S0 + i] >= s * sigma * (pg * fall_high + gain)
-        )
+        ahead = above and (alpha_0 <= w[_W_RISE_HIGH + i] or x4 * w[_W_S0 + i] >= s * sigma * (pg * fall_high + gain))
         tangent = abs(psi) * (1.0 + 0.44 * psi * psi)  # no less than tan(psi) below 0.78
-        low = alpha <= w[LANES * _W_RISE_HIGH + i]
-        fall = w[LANES * _W_FALL_LOW + i] if low else max(fall_high, w[LANES * _W_FALL_LOW + i])
+        low = alpha <= w[_W_RISE_HIGH + i]
+        fall = w[_W_FALL_LOW + i] if low else max(fall_high, w[_W_FALL_LOW + i])
         behind = (above and low) or x4 * (s - tangent * c) >= s * sigma * (pg * fall + gain)
         plain = sound and (ahead if psi > 0.0 else behind)
-        w[LANES * _W_PLAIN + i] = 1.0 if plain else 0.0
-        airspeed = w[LANES * _W_AIRSPEED + i]
-        turning = w[LANES * _W_TURNING + i]
-        pressure = 0.5 * ratio * ratio * (airspeed * airspeed + turning * turning) * w[LANES * _W_STRIP + i]
-        w[LANES * _W_THRUST + i] = pressure * normal
-        w[LANES * _W_TORQUE + i] = pressure * (lift * s + drag * c) * w[LANES * _W_RADIUS + i]
-        stalled = alpha > w[LANES * _W_STALL_HIGH + i] or alpha < w[LANES * _W_STALL_LOW + i]
-        w[LANES * _W_STALLED + i] = 1.0 if stalled else 0.0
-        ln_re = w[LANES * _W_LN_RE + i]
-        outside = alpha > w[LANES * _W_DATA_HIGH + i] or alpha < w[LANES * _W_DATA_LOW + i]
-        outside = outside or ln_re < w[LANES * _W_LN_RE_LOW + i] or ln_re > w[LANES * _W_LN_RE_HIGH + i]
-        w[LANES * _W_OUTSIDE + i] = 1.0 if outside else 0.0
-        w[LANES * _W_LOW_RE + i] = 1.0 if ln_re < _LN_60000 else 0.0
+        w[_W_PLAIN + i] = 1.0 if plain else -w[_W_DONE + i]
+        airspeed = w[_W_AIRSPEED + i]
+        turning = w[_W_TURNING + i]
+        pressure = 0.5 * ratio * ratio * (airspeed * airspeed + turning * turning) * w[_W_STRIP + i]
+        w[_W_THRUST + i] = pressure * normal
+        w[_W_TORQUE + i] = pressure * (lift * s + drag * c) * w[_W_RADIUS + i]
+        stalled = alpha > w[_W_STALL_HIGH + i] or alpha < w[_W_STALL_LOW + i]
+        w[_W_STALLED + i] = 1.0 if stalled else 0.0
+        ln_re = w[_W_LN_RE + i]
+        outside = alpha > w[_W_DATA_HIGH + i] or alpha < w[_W_DATA_LOW + i]
+        outside = outside or ln_re < w[_W_LN_RE_LOW + i] or ln_re > w[_W_LN_RE_HIGH + i]
+        w[_W_OUTSIDE + i] = 1.0 if outside else 0.0
+        w[_W_LOW_RE + i] = 1.0 if ln_re < _LN_60000 else 0.0
 
 
 @_jit
-def _prove_or_search(i, w, index, inverse_viscosity, inverse_sound, element, polar, bound, ln_reynolds, loss):
-    """Prove that a lane's root is the first one, or find that anew.
+def _lanes_stalled(n, w, index, polars, bounds, loss):
+    """Prove the first root of lanes whose undisturbed inflow is stalled, where a few bounds are enough."""
+    flat = polars.reshape(-1)
+    n_alpha = polars.shape[2]
+    for i in range(n):
+        psi = w[_W_PSI + i]
+        reach = w[_W_ALPHA_0 + i] - w[_W_RISE_HIGH + i]
+        if not (
+            w[_W_PLAIN + i] == -1.0
+            and w[_W_ALPHA_0 + i] >= w[_W_RISE_LOW + i]
+            and 0.0 < psi < 0.78
+            and reach > 0.0
+            and w[_W_C + i] > 0.0
+            and w[_W_THRUST + i] > 0.0
+        ):
+            continue
+        at, row = index[i], index[LANES + i]
+        if reach > psi:
+            # A stalled root well past the fall of the lift, and lift too small for another one further out.
+            angle = w[_W_ALPHA_0 + i] - max(bounds[at, row, B_CALM_FROM], bounds[at, row + 1, B_CALM_FROM])
+            pg = w[_W_PG + i]
+            fall = pg * max(bounds[at, row, B_CALM_FALL], bounds[at, row + 1, B_CALM_FALL]) + 4.0 * (pg - 1.0)
+            if not (psi < angle < 0.46 and 0.8 * w[_W_X4 + i] >= w[_W_SIGMA + i] * fall):
+                continue
+            # From there on lift must stay too small for another root, until it rises or X outweighs its fall.
+            sine, cosine = _sine_cosine(reach)
+            s_end = w[_W_S0 + i] * cosine + w[_W_C0 + i] * sine
+            factor, _ = _loss_factor(s_end, w[_W_TIP + i], w[_W_ROOT + i], loss)
+            if reach > 0.78 or not _dead_beyond(
+                angle,
+                reach,
+                w[_W_ALPHA_0 + i],
+                w[_W_S0 + i],
+                w[_W_C0 + i],
+                w[_W_SIGMA + i],
+                pg,
+                4.0 * factor * s_end,
+                max(bounds[at, row, B_PEAK_LIFT], bounds[at, row + 1, B_PEAK_LIFT]),
+                min(bounds[at, row, B_PEAK_AT], bounds[at, row + 1, B_PEAK_AT]),
+                max(bounds[at, row, B_PEAK_AT], bounds[at, row + 1, B_PEAK_AT]),
+                flat,
+                2 * (at * polars.shape[1] + row) * n_alpha,
+                n_alpha,
+                w[_W_WEIGHT + i],
+            ):
+                continue
+            reach = 0.8 * psi
+        clear = _clear_beyond_stall(
+            reach,
+            w[_W_ALPHA_0 + i],
+            w[_W_S0 + i],
+            w[_W_C0 + i],
+            w[_W_SIGMA + i],
+            w[_W_RISE + i],
+            w[_W_X4 + i],
+            flat,
+            2 * (at * polars.shape[1] + row) * n_alpha,
+            n_alpha,
+            w[_W_WEIGHT + i],
+            min(bounds[at, row, B_TROUGH_FROM], bounds[at, row + 1, B_TROUGH_FROM]),
+            max(bounds[at, row, B_TROUGH_TO], bounds[at, row + 1, B_TROUGH_TO]),
+            min(bounds[at, row, B_TROUGH_LIFT], bounds[at, row + 1, B_TROUGH_LIFT]),
+        )
+        if clear == reach:
+            w[_W_PLAIN + i] = 1.0
 
-    Returns psi, W/W0, lift, drag, 4 F |sin phi|, induction factor, status and evaluations.
+
+@_jit
+def _copy(state, row, first, count, w, start):
+    """Copy a row of the batch into a row of the state."""
+    target = state[row]
+    for i in range(count):
+        target[first + i] = w[start + i]
+
+
+@_jit
+def solve_lanes(points, elements, polars, bounds, ln_reynolds, loss, blades, state, scratch, index):
+    """Solve every element at every point by Newton steps, and keep each root that is plainly the first one.
+
+    Parameters
+    ----------
+    points : array (n_points, P_COLUMNS)
+        Each solved by itself: neither order nor number matters.
+    elements : array (n_elements, E_COLUMNS)
+    polars : array (n_polars, n_re, n_alpha, 2)
+    bounds : array (n_polars, n_re, B_COLUMNS)
+    ln_reynolds : array (n_re,)
+    loss : array (n, 5)
+    blades : int
+    state : array (S_ROWS, n_points * n_elements)
+        Written; the elements of a point stand together. Status 1 where done, else for `prove_roots`.
+    scratch : array (scratch_size(n_points, n_elements),)
+    index : array of int64 (2 * LANES,)
+        Working space, whatever it holds.
     """
-    done = w[LANES * _W_DONE + i] == 1.0
-    evaluations = 0
-    alpha_0, phi_0, s0, c0 = (
-        w[LANES * _W_ALPHA_0 + i],
-        w[LANES * _W_PHI_0 + i],
-        w[LANES * _W_S0 + i],
-        w[LANES * _W_C0 + i],
-    )
-    if done:
-        psi, speed = w[LANES * _W_PSI + i], w[LANES * _W_NOW + i]
-        lift, drag, x4 = w[LANES * _W_LIFT + i], w[LANES * _W_DRAG + i], w[LANES * _W_X4 + i]
-        row, weight, pg, rise = index[LANES + i], w[LANES * _W_WEIGHT + i], w[LANES * _W_PG + i], w[LANES * _W_RISE + i]
-    else:
-        done, psi, speed, lift, drag, x4, _, row, weight, pg, rise, evaluations = _follow(
-            False,
-            w[LANES * _W_PSI + i],
-            w[LANES * _W_LOW + i],
-            w[LANES * _W_HIGH + i],
-            w[LANES * _W_SPEED + i],
-            w[LANES * _W_LIFT + i],
-            w[LANES * _W_MACH_0 + i],
-            w[LANES * _W_LN_RE_0 + i],
-            index[LANES + i],
-            alpha_0,
-            s0,
-            c0,
-            element,
-            polar,
-            ln_reynolds,
-            loss,
-        )
-    if done:
-        sine, cosine = _sine_cosine(psi)
-        proof, clear = _first_and_alone(
-            psi,
-            sine / cosine,
-            s0 * cosine + c0 * sine,
-            c0 * cosine - s0 * sine,
-            alpha_0,
-            s0,
-            c0,
-            x4,
-            lift,
-            drag,
-            element,
-            polar,
-            bound,
-            row,
-            weight,
-            pg,
-            rise,
-            loss,
-        )
-        found = False
-        if proof == 0:
-            # Free of roots up to `clear`: walk the rest of the way.
-            before, behind, found, used = _search(
-                1, False, clear, psi, alpha_0, s0, c0, element, polar, bound, row, weight, pg, rise, loss
-            )
-            evaluations += used
-            if found and abs(behind - psi) > 1e-9:
-                found, psi, speed, lift, drag, x4, _, row, weight, pg, rise, used = _follow(
-                    False,
-                    0.5 * (before + behind),
-                    before,
-                    behind,
-                    speed,
-                    lift,
-                    w[LANES * _W_MACH_0 + i],
-                    w[LANES * _W_LN_RE_0 + i],
-                    row,
-                    alpha_0,
-                    s0,
-                    c0,
-                    element,
-                    polar,
-                    ln_reynolds,
-                    loss,
-                )
-                evaluations += used
-            else:
-                found = True
-        if proof > 0 or found:
-            another = False
-            if proof != 1:
-                another, used = _another_beyond(
-                    1, False, psi, alpha_0, phi_0, s0, c0, element, polar, bound, row, weight, pg, rise, loss
-                )
-                evaluations += used
-            return psi, speed, lift, drag, x4, math.nan, 2 if another else 1, evaluations
-    return solve_element(
-        w[LANES * _W_AIRSPEED + i],
-        w[LANES * _W_TURNING + i],
-        element,
-        inverse_viscosity,
-        inverse_sound,
-        polar,
-        bound,
-        ln_reynolds,
-        loss,
+    n_points = points.shape[0]
+    n_elements = elements.shape[0]
+    n_pairs = n_points * n_elements
+    w = scratch[:_W_END]
+    ln_chord = scratch[_W_END : _W_END + n_elements]
+    free = _W_END + n_elements
+    tip_square = scratch[free : free + n_points]
+    ln_re_per_chord = scratch[free + n_points : free + 2 * n_points]
+    w[:] = 0.0
+    index[:] = 0
+    last = float(polars.shape[2] - 1)
+    angle_scale = last / (2.0 * math.pi)
+    farthest = 0.0
+    for e in range(n_elements):
+        farthest = max(farthest, elements[e, E_RADIUS])
+        ln_chord[e] = math.log(elements[e, E_CHORD])
+    for p in range(n_points):
+        tip = points[p, P_OMEGA] * farthest
+        tip_square[p] = points[p, P_AIRSPEED] * points[p, P_AIRSPEED] + tip * tip
+        ln_re_per_chord[p] = 0.5 * math.log(tip_square[p]) + math.log(points[p, P_INVERSE_VISCOSITY])
+    for first in range(0, n_pairs, LANES):
+        count = min(LANES, n_pairs - first)
+        p = first // n_elements
+        e = first - p * n_elements
+        for i in range(LANES):
+            w[_W_AIRSPEED + i] = points[p, P_AIRSPEED]
+            w[_W_TURNING + i] = points[p, P_OMEGA] * elements[e, E_RADIUS]
+            w[_W_TIP_SQUARE + i] = tip_square[p]
+            w[_W_ALPHA_0 + i] = elements[e, E_TWIST]
+            w[_W_LN_RE_0 + i] = ln_re_per_chord[p] + ln_chord[e]
+            w[_W_MACH_0 + i] = points[p, P_INVERSE_SOUND]
+            w[_W_SIGMA + i] = elements[e, E_SOLIDITY]
+            w[_W_TIP + i] = elements[e, E_TIP]
+            w[_W_ROOT + i] = elements[e, E_ROOT]
+            w[_W_DIVERGENCE + i] = elements[e, E_DIVERGENCE]
+            w[_W_BETA + i] = elements[e, E_TABLE_BETA]
+            w[_W_RADIUS + i] = elements[e, E_RADIUS]
+            w[_W_STRIP + i] = blades * elements[e, E_CHORD] * elements[e, E_WIDTH]
+            w[_W_LN_RE_LOW + i] = elements[e, E_LN_RE_LOW]
+            w[_W_LN_RE_HIGH + i] = elements[e, E_LN_RE_HIGH]
+            index[i] = int(elements[e, E_POLAR])
+            if i < count - 1:
+                e += 1
+                if e == n_elements:
+                    e = 0
+                    p += 1
+        n = index.shape[0] // 2  # LANES; known only at run time, loops are not unrolled to the end
+        _lanes_start(n, w)
+        _lanes_guess(n, w, index, polars, bounds, ln_reynolds, angle_scale, last)
+        rounds = 1.0
+        for _ in range(5):  # the stragglers, at the edge of stall, cost less one by one
+            rounds += 1.0
+            _lanes_flow(n, w, loss[0, 4], angle_scale, last)
+            _lanes_look_up(n, w, index, polars, ln_reynolds, loss)
+            _lanes_residual(n, w, angle_scale)
+            arrived = _lanes_step(n, w)
+            if arrived == LANES:
+                break
+        _lanes_finish(n, w, index, bounds)
+        _lanes_stalled(n, w, index, polars, bounds, loss)
+        _copy(state, S_PSI, first, count, w, _W_PSI)
+        _copy(state, S_SPEED, first, count, w, _W_NOW)
+        _copy(state, S_LIFT, first, count, w, _W_LIFT)
+        _copy(state, S_DRAG, first, count, w, _W_DRAG)
+        _copy(state, S_X4, first, count, w, _W_X4)
+        _copy(state, S_STATUS, first, count, w, _W_PLAIN)
+        _copy(state, S_THRUST, first, count, w, _W_THRUST)
+        _copy(state, S_TORQUE, first, count, w, _W_TORQUE)
+        _copy(state, S_STALLED, first, count, w, _W_STALLED)
+        _copy(state, S_OUTSIDE, first, count, w, _W_OUTSIDE)
+        _copy(state, S_LOW_RE, first, count, w, _W_LOW_RE)
+        _copy(state, S_LOW, first, count, w, _W_LOW)
+        _copy(state, S_HIGH, first, count, w, _W_HIGH)
+        for i in range(count):
+            state[S_INDUCTION, first + i] = math.nan
+            state[S_EVALUATIONS, first + i] = rounds
+
+
+@_jit
+def _inflow(point, element):
+    """Undisturbed inflow of an element: V, Omega r, sin phi0, cos phi0, phi0, alpha0, ln Re and Mach number at W0."""
+    airspeed = point[P_AIRSPEED]
+    turning = point[P_OMEGA] * element[E_RADIUS]
+    speed = math.sqrt(airspeed * airspeed + turning * turning)
+    phi_0 = math.atan2(airspeed, turning)
+    return (
+        airspeed,
+        turning,
+        airspeed / speed,
+        turning / speed,
+        phi_0,
+        element[E_TWIST] - phi_0,
+        math.log(speed * element[E_CHORD] * point[P_INVERSE_VISCOSITY]),
+        speed * point[P_INVERSE_SOUND],
     )
 
 
 @_jit
-def _settle(i, w, index, inverse_viscosity, inverse_sound, element, polar, bound, ln_reynolds, loss):
-    """Put the proven or newly found root of a lane in its place; returns status, induction factor, evaluations."""
-    psi, ratio, lift, drag, x4, induction, status, evaluations = _prove_or_search(
-        i, w, index, inverse_viscosity, inverse_sound, element, polar, bound, ln_reynolds, loss
-    )
+def _write(state, pair, point, element, bound, ln_reynolds, blades, psi, ratio, lift, drag, x4, induction, status):
+    """Put the root of an element in its place, with its forces and where it stands among the data."""
+    airspeed, turning, s0, c0, _, alpha_0, ln_re_0, _ = _inflow(point, element)
     sine, cosine = math.sin(psi), math.cos(psi)
-    s0, c0 = w[LANES * _W_S0 + i], w[LANES * _W_C0 + i]
     s = s0 * cosine + c0 * sine
     c = c0 * cosine - s0 * sine
-    w[LANES * _W_PSI + i] = psi
-    w[LANES * _W_NOW + i] = ratio
-    w[LANES * _W_LIFT + i] = lift
-    w[LANES * _W_DRAG + i] = drag
-    w[LANES * _W_X4 + i] = x4
-    w[LANES * _W_S + i] = s
-    w[LANES * _W_C + i] = c
-    airspeed, turning = w[LANES * _W_AIRSPEED + i], w[LANES * _W_TURNING + i]
-    pressure = 0.5 * ratio * ratio * (airspeed * airspeed + turning * turning) * w[LANES * _W_STRIP + i]
+    square = ratio * ratio * (airspeed * airspeed + turning * turning)
+    pressure = 0.5 * square * blades * element[E_CHORD] * element[E_WIDTH]
     if status == 4:
         pressure = math.nan
-    w[LANES * _W_THRUST + i] = pressure * (lift * c - drag * s)
-    w[LANES * _W_TORQUE + i] = pressure * (lift * s + drag * c) * w[LANES * _W_RADIUS + i]
-    alpha = w[LANES * _W_ALPHA_0 + i] - psi
-    ln_re = w[LANES * _W_LN_RE_0 + i] + math.log(ratio)
-    row, weight = _row(ln_re, ln_reynolds, index[LANES + i])
+    alpha = alpha_0 - psi
+    ln_re = ln_re_0 + math.log(ratio)
+    row, weight = _row(ln_re, ln_reynolds, 0)
     rest = 1.0 - weight
     stalled = (
         alpha > rest * bound[row, B_STALL_HIGH] + weight * bound[row + 1, B_STALL_HIGH]
@@ -1448,209 +1603,188 @@ def _settle(i, w, index, inverse_viscosity, inverse_sound, element, polar, bound
         or ln_re < element[E_LN_RE_LOW]
         or ln_re > element[E_LN_RE_HIGH]
     )
-    w[LANES * _W_STALLED + i] = 1.0 if stalled else 0.0
-    w[LANES * _W_OUTSIDE + i] = 1.0 if outside else 0.0
-    w[LANES * _W_LOW_RE + i] = 1.0 if ln_re < _LN_60000 else 0.0
-    return status, induction, evaluations
+    state[S_PSI, pair] = psi
+    state[S_SPEED, pair] = ratio
+    state[S_LIFT, pair] = lift
+    state[S_DRAG, pair] = drag
+    state[S_X4, pair] = x4
+    state[S_INDUCTION, pair] = induction
+    state[S_STATUS, pair] = status
+    state[S_THRUST, pair] = pressure * (lift * c - drag * s)
+    state[S_TORQUE, pair] = pressure * (lift * s + drag * c) * element[E_RADIUS]
+    state[S_STALLED, pair] = 1.0 if stalled else 0.0
+    state[S_OUTSIDE, pair] = 1.0 if outside else 0.0
+    state[S_LOW_RE, pair] = 1.0 if ln_re < _LN_60000 else 0.0
 
 
 @_jit
-def _keep(i, w, row, status, induction, width):
-    """Write what one element does into its row of the radial array."""
-    ratio = w[LANES * _W_NOW + i]
-    airspeed, turning = w[LANES * _W_AIRSPEED + i], w[LANES * _W_TURNING + i]
-    speed = ratio * math.sqrt(airspeed * airspeed + turning * turning)
-    s, c = w[LANES * _W_S + i], w[LANES * _W_C + i]
-    row[L_INFLOW] = w[LANES * _W_PHI_0 + i] + w[LANES * _W_PSI + i]
-    row[L_ALPHA] = w[LANES * _W_ALPHA_0 + i] - w[LANES * _W_PSI + i]
-    row[L_LIFT] = w[LANES * _W_LIFT + i]
-    row[L_DRAG] = w[LANES * _W_DRAG + i]
-    row[L_AXIAL] = speed * s - airspeed
-    row[L_SWIRL] = turning - speed * c
-    row[L_THRUST] = w[LANES * _W_THRUST + i] / width
-    row[L_TORQUE] = w[LANES * _W_TORQUE + i] / width
-    row[L_STATUS] = status
-    row[L_SPEED] = speed
-    row[L_LOSS] = 0.25 * w[LANES * _W_X4 + i] / max(abs(s), 1e-300)
-    row[L_INDUCTION] = induction
-
-
-@_jit
-def solve_points(points, elements, polars, bounds, ln_reynolds, loss, blades, results, radial, scratch, index):
-    """Solve every element at every point and add up the forces.
+def prove_roots(points, elements, polars, bounds, ln_reynolds, loss, blades, state):
+    """Prove the roots that `solve_lanes` left without proof, or walk from there to the first one.
 
     Parameters
     ----------
-    points : array (n_points, P_COLUMNS)
-        Each solved by itself: the order does not matter.
-    elements : array (n_elements, E_COLUMNS)
-    polars : array (n_polars, n_re, n_alpha, 2)
-    bounds : array (n_polars, n_re, B_COLUMNS)
-    ln_reynolds : array (n_re,)
-    loss : array (n, 5)
-    blades : int
-    results : array (n_points, R_COLUMNS)
-        Written. Forces are per unit density; shares are weighted by r^2 c dr.
-    radial : array (n_points, n_elements, L_COLUMNS) or (0, 0, 0)
-        Written where it has room.
-    scratch : array (scratch_size(n_points, n_elements),)
-    index : array of int64 (2 * LANES,)
-        Working space, whatever it holds.
+    points, elements, polars, bounds, ln_reynolds, loss, blades, state
+        As for `solve_lanes`; status 1 or 2 where done, 0 where it is left to `search_roots`.
     """
-    n_points = points.shape[0]
     n_elements = elements.shape[0]
-    n_pairs = n_points * n_elements
-    w = scratch[: LANES * _W_ROWS]
-    ln_chord = scratch[LANES * _W_ROWS : LANES * _W_ROWS + n_elements]
-    tip_square = scratch[LANES * _W_ROWS + n_elements : LANES * _W_ROWS + n_elements + n_points]
-    ln_re_per_chord = scratch[LANES * _W_ROWS + n_elements + n_points : LANES * _W_ROWS + n_elements + 2 * n_points]
-    w[:] = 0.0
-    index[:] = 0
-    last = float(polars.shape[2] - 1)
-    angle_scale = last / (2.0 * math.pi)
-    total = 0.0  # of r^2 B c dr
-    farthest = 0.0
-    for e in range(n_elements):
-        total += elements[e, E_RADIUS] * elements[e, E_RADIUS] * blades * elements[e, E_CHORD] * elements[e, E_WIDTH]
-        farthest = max(farthest, elements[e, E_RADIUS])
-        ln_chord[e] = math.log(elements[e, E_CHORD])
-    for p in range(n_points):
-        tip = points[p, P_OMEGA] * farthest
-        tip_square[p] = points[p, P_AIRSPEED] * points[p, P_AIRSPEED] + tip * tip
-        ln_re_per_chord[p] = 0.5 * math.log(tip_square[p]) + math.log(points[p, P_INVERSE_VISCOSITY])
-    flat = polars.reshape(-1)
-    results[:, :] = 0.0
-    keep = radial.shape[0] > 0
-    for first in range(0, n_pairs, LANES):
-        count = min(LANES, n_pairs - first)
-        p = first // n_elements
-        e = first - p * n_elements
-        for i in range(LANES):
-            w[LANES * _W_AIRSPEED + i] = points[p, P_AIRSPEED]
-            w[LANES * _W_TURNING + i] = points[p, P_OMEGA] * elements[e, E_RADIUS]
-            w[LANES * _W_TIP_SQUARE + i] = tip_square[p]
-            w[LANES * _W_ALPHA_0 + i] = elements[e, E_TWIST]
-            w[LANES * _W_LN_RE_0 + i] = ln_re_per_chord[p] + ln_chord[e]
-            w[LANES * _W_MACH_0 + i] = points[p, P_INVERSE_SOUND]
-            w[LANES * _W_SIGMA + i] = elements[e, E_SOLIDITY]
-            w[LANES * _W_TIP + i] = elements[e, E_TIP]
-            w[LANES * _W_ROOT + i] = elements[e, E_ROOT]
-            w[LANES * _W_DIVERGENCE + i] = elements[e, E_DIVERGENCE]
-            w[LANES * _W_BETA + i] = elements[e, E_TABLE_BETA]
-            w[LANES * _W_RADIUS + i] = elements[e, E_RADIUS]
-            w[LANES * _W_STRIP + i] = blades * elements[e, E_CHORD] * elements[e, E_WIDTH]
-            w[LANES * _W_LN_RE_LOW + i] = elements[e, E_LN_RE_LOW]
-            w[LANES * _W_LN_RE_HIGH + i] = elements[e, E_LN_RE_HIGH]
-            index[i] = int(elements[e, E_POLAR])
-            if i < count - 1:
-                e += 1
-                if e == n_elements:
-                    e = 0
-                    p += 1
-        _lanes_start(w)
-        _lanes_guess(w, index, polars, bounds, ln_reynolds, angle_scale, last)
-        rounds = 1
-        for _ in range(5):  # the stragglers, at the edge of stall, cost less one by one
-            rounds += 1
-            _lanes_flow(w, loss[0, 4], angle_scale, last)
-            _lanes_look_up(w, index, polars, ln_reynolds, loss)
-            _lanes_residual(w, angle_scale)
-            arrived = _lanes_step(w)
-            if arrived == LANES:
-                break
-        p = first // n_elements
-        e = first - p * n_elements
-        _lanes_finish(w, index, bounds)
-        thrust, torque, stalled, outside, low_re, status, evaluations = 0.0, 0.0, 0.0, 0.0, 0.0, 0, 0
-        for i in range(count):
-            state = 1
-            induction = math.nan
-            plain = w[LANES * _W_PLAIN + i] == 1.0
-            if not plain and w[LANES * _W_DONE + i] == 1.0:
-                psi = w[LANES * _W_PSI + i]
-                reach = w[LANES * _W_ALPHA_0 + i] - w[LANES * _W_RISE_HIGH + i]
-                at, row = index[i], index[LANES + i]
-                if reach > psi > 0.0:
-                    # A stalled root well past the fall of the lift, and lift too small for another one further out.
-                    calm = max(bounds[at, row, B_CALM_FROM], bounds[at, row + 1, B_CALM_FROM])
-                    pg, x = w[LANES * _W_PG + i], w[LANES * _W_X4 + i] / w[LANES * _W_SIGMA + i]
-                    fall = pg * max(bounds[at, row, B_CALM_FALL], bounds[at, row + 1, B_CALM_FALL]) + 4.0 * (pg - 1.0)
-                    peak = pg * max(bounds[at, row, B_PEAK_LIFT], bounds[at, row + 1, B_PEAK_LIFT])
-                    reach = 0.0
-                    angle = w[LANES * _W_ALPHA_0 + i] - calm
-                    if (
-                        psi < angle < 0.46
-                        and 0.8 * x >= fall
-                        and _too_small(
-                            angle,
-                            w[LANES * _W_S0 + i],
-                            w[LANES * _W_C0 + i],
-                            w[LANES * _W_SIGMA + i],
-                            peak,
-                            w[LANES * _W_TIP + i],
-                            w[LANES * _W_ROOT + i],
-                            loss,
-                        )
-                    ):
-                        reach = 0.8 * psi
-                if 0.0 < reach <= psi < 0.78 and w[LANES * _W_C + i] > 0.0 and w[LANES * _W_THRUST + i] > 0.0:
-                    plain = reach == _clear_beyond_stall(
-                        reach,
-                        w[LANES * _W_ALPHA_0 + i],
-                        w[LANES * _W_S0 + i],
-                        w[LANES * _W_C0 + i],
-                        w[LANES * _W_SIGMA + i],
-                        w[LANES * _W_DRAG_0 + i],
-                        w[LANES * _W_X4 + i],
-                        flat,
-                        2 * (at * polars.shape[1] + row) * polars.shape[2],
-                        polars.shape[2],
-                        w[LANES * _W_WEIGHT + i],
-                        min(bounds[at, row, B_TROUGH_FROM], bounds[at, row + 1, B_TROUGH_FROM]),
-                        max(bounds[at, row, B_TROUGH_TO], bounds[at, row + 1, B_TROUGH_TO]),
-                        min(bounds[at, row, B_TROUGH_LIFT], bounds[at, row + 1, B_TROUGH_LIFT]),
-                    )
-            if not plain:
-                at = index[i]
-                state, induction, used = _settle(
-                    i,
-                    w,
-                    index,
-                    points[p, P_INVERSE_VISCOSITY],
-                    points[p, P_INVERSE_SOUND],
-                    elements[e],
-                    polars[at],
-                    bounds[at],
+    for pair in range(state.shape[1]):
+        if state[S_STATUS, pair] > 0.0:
+            continue
+        p = pair // n_elements
+        e = pair - p * n_elements
+        element = elements[e]
+        at = int(element[E_POLAR])
+        polar, bound = polars[at], bounds[at]
+        _, _, s0, c0, phi_0, alpha_0, ln_re_0, mach_0 = _inflow(points[p], element)
+        psi, speed, lift = state[S_PSI, pair], state[S_SPEED, pair], state[S_LIFT, pair]
+        drag, x4 = state[S_DRAG, pair], state[S_X4, pair]
+        done = state[S_STATUS, pair] < 0.0
+        moved = not done
+        state[S_STATUS, pair] = 0.0
+        row, weight = _row(ln_re_0 + math.log(speed), ln_reynolds, 0)
+        pg, rise = _compressibility(mach_0 * speed, lift, element)
+        inner, outer = state[S_LOW, pair], state[S_HIGH, pair]
+        found, clear = True, 0.0
+        proof = 0
+        for attempt in range(2):
+            if not done:
+                done, psi, speed, lift, drag, x4, _, row, weight, pg, rise, used = _follow(
+                    False,
+                    False,
+                    psi,
+                    inner,
+                    outer,
+                    speed,
+                    lift,
+                    mach_0,
+                    ln_re_0,
+                    row,
+                    alpha_0,
+                    s0,
+                    c0,
+                    element,
+                    polar,
                     ln_reynolds,
                     loss,
                 )
-                evaluations += used
-            share = elements[e, E_RADIUS] * w[LANES * _W_RADIUS + i] * w[LANES * _W_STRIP + i] / total
-            thrust += w[LANES * _W_THRUST + i]
-            torque += w[LANES * _W_TORQUE + i]
-            stalled += share * w[LANES * _W_STALLED + i]
-            outside += share * (1.0 if elements[e, E_OUTSIDE] > 0.0 else w[LANES * _W_OUTSIDE + i])
-            low_re += share * w[LANES * _W_LOW_RE + i]
-            status = max(status, state)
-            evaluations += rounds
-            if keep:
-                _keep(i, w, radial[p, e], state, induction, elements[e, E_WIDTH])
-            e += 1
-            if e == n_elements or i == count - 1:
-                results[p, R_THRUST] += thrust
-                results[p, R_TORQUE] += torque
-                results[p, R_STALLED] += stalled
-                results[p, R_OUTSIDE] += outside
-                results[p, R_LOW_RE] += low_re
-                results[p, R_STATUS] = max(results[p, R_STATUS], float(status))
-                results[p, R_EVALUATIONS] += evaluations
-                thrust, torque, stalled, outside, low_re, status, evaluations = 0.0, 0.0, 0.0, 0.0, 0.0, 0, 0
-                e = 0
-                p += 1
+                state[S_EVALUATIONS, pair] += used
+                if not done:
+                    proof = -1
+                    break
+            if attempt == 1:
+                break
+            sine, cosine = _sine_cosine(psi)
+            proof, clear = _first_and_alone(
+                psi,
+                sine / cosine,
+                s0 * cosine + c0 * sine,
+                c0 * cosine - s0 * sine,
+                alpha_0,
+                s0,
+                c0,
+                x4,
+                lift,
+                drag,
+                element,
+                polar,
+                bound,
+                row,
+                weight,
+                pg,
+                rise,
+                loss,
+            )
+            if proof != 0:
+                break
+            # Free of roots up to `clear`: walk the rest of the way.
+            before, behind, found, used = _search(
+                1, False, clear, psi, alpha_0, s0, c0, element, polar, bound, row, weight, pg, rise, loss
+            )
+            state[S_EVALUATIONS, pair] += used
+            if not found or abs(behind - psi) <= 1e-9:
+                break
+            inner, outer, psi = before, behind, 0.5 * (before + behind)
+            done = False
+            moved = True
+        if proof < 0:
+            continue
+        another = False
+        if proof != 1:
+            another, used = _another_beyond(
+                1, False, psi, alpha_0, phi_0, s0, c0, element, polar, bound, row, weight, pg, rise, loss
+            )
+            state[S_EVALUATIONS, pair] += used
+        status = 2 if another else 1
+        if moved:
+            _write(
+                state,
+                pair,
+                points[p],
+                element,
+                bound,
+                ln_reynolds,
+                blades,
+                psi,
+                speed,
+                lift,
+                drag,
+                x4,
+                math.nan,
+                status,
+            )
+        else:
+            state[S_STATUS, pair] = status
+
+
+@_jit
+def search_roots(points, elements, polars, bounds, ln_reynolds, loss, blades, state):
+    """Find the roots that are still open by walking outward from the undisturbed inflow.
+
+    Parameters
+    ----------
+    points, elements, polars, bounds, ln_reynolds, loss, blades, state
+        As for `solve_lanes`; status 1 to 4 everywhere afterwards.
+    """
+    n_elements = elements.shape[0]
+    for pair in range(state.shape[1]):
+        if state[S_STATUS, pair] > 0.0:
+            continue
+        p = pair // n_elements
+        e = pair - p * n_elements
+        element = elements[e]
+        at = int(element[E_POLAR])
+        psi, speed, lift, drag, x4, induction, status, evaluations = solve_element(
+            points[p, P_AIRSPEED],
+            points[p, P_OMEGA] * element[E_RADIUS],
+            element,
+            points[p, P_INVERSE_VISCOSITY],
+            points[p, P_INVERSE_SOUND],
+            polars[at],
+            bounds[at],
+            ln_reynolds,
+            loss,
+        )
+        state[S_EVALUATIONS, pair] += evaluations
+        _write(
+            state,
+            pair,
+            points[p],
+            element,
+            bounds[at],
+            ln_reynolds,
+            blades,
+            psi,
+            speed,
+            lift,
+            drag,
+            x4,
+            induction,
+            status,
+        )
 
 
 def scratch_size(n_points: int, n_elements: int) -> int:
-    """Length of the working space of `solve_points`.
+    """Length of the working space of `solve_lanes`.
 
     Parameters
     ----------
@@ -1660,7 +1794,7 @@ def scratch_size(n_points: int, n_elements: int) -> int:
     -------
     int
     """
-    return LANES * _W_ROWS + n_elements + 2 * n_points
+    return _W_END + n_elements + 2 * n_points
 
 
 def loss_table(cells: int = 512, end: float = 5.2) -> np.ndarray:

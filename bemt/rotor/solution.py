@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from functools import lru_cache
 
@@ -13,18 +14,6 @@ from bemt.rotor import kernels as k
 from bemt.rotor.elements import BladeElements
 
 FloatArray = NDArray[np.float64]
-
-RADIAL_COLUMNS = {
-    "inflow_angle": k.L_INFLOW,
-    "angle_of_attack": k.L_ALPHA,
-    "section_lift_coefficient": k.L_LIFT,
-    "section_drag_coefficient": k.L_DRAG,
-    "axial_induced_velocity": k.L_AXIAL,
-    "tangential_induced_velocity": k.L_SWIRL,
-    "thrust_loading": k.L_THRUST,
-    "torque_loading": k.L_TORQUE,
-}
-"""Columns of the radial results by the registry's names; angles in radians, loadings per unit density."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -41,8 +30,9 @@ class RotorSolution:
         Shares of the span weighted by r^2 chord.
     status : numpy.ndarray of int16, shape (n,)
         Worst status of the elements.
-    radial : numpy.ndarray, shape (n, n_elements, kernels.L_COLUMNS), optional
-        What each element does.
+    radial : mapping of str to numpy.ndarray, shape (n, n_elements), optional
+        What each element does, by the registry's names, angles in radians and loadings per unit density; also
+        `speed` [m/s], `end_loss`, `high_induction` (NaN but on Buhl's branch), `status` and `evaluations`.
     """
 
     thrust_per_density: FloatArray
@@ -51,7 +41,7 @@ class RotorSolution:
     outside_polar_share: FloatArray
     low_reynolds_share: FloatArray
     status: NDArray[np.int16]
-    radial: FloatArray | None = None
+    radial: Mapping[str, FloatArray] | None = None
 
 
 @lru_cache(maxsize=1)
@@ -92,19 +82,48 @@ def solve(
     InputError
         If a value is out of range or not finite.
     """
-    columns = np.broadcast_arrays(
-        *(np.atleast_1d(np.asarray(value, dtype=np.float64)) for value in (airspeed, angular_speed)),
-        *(1.0 / np.atleast_1d(np.asarray(value, dtype=np.float64)) for value in (kinematic_viscosity, speed_of_sound)),
-    )
-    points = np.stack(columns, axis=-1)
-    if not np.isfinite(points).all() or (points < 0).any():
+    given = [
+        np.asarray(value, dtype=np.float64) for value in (airspeed, angular_speed, kinematic_viscosity, speed_of_sound)
+    ]
+    points = np.empty((max(value.size for value in given), k.P_COLUMNS))
+    for column, value in enumerate(given):
+        points[:, column] = 1.0 / value if column in (k.P_INVERSE_VISCOSITY, k.P_INVERSE_SOUND) else value
+    if not 0.0 <= points.min() <= points.max() < np.inf:
         raise InputError("operating point", "airspeed, rotational speed and air must be finite and not negative")
     if (points[:, k.P_AIRSPEED] + points[:, k.P_OMEGA] <= 0).any():
         raise InputError("operating point", "neither airspeed nor rotation: nothing to solve")
-    results = np.zeros((points.shape[0], k.R_COLUMNS))
-    shape = (points.shape[0], elements.columns.shape[0], k.L_COLUMNS) if radial else (0, 0, 0)
-    loading = np.zeros(shape)
-    k.solve_points(
+    state = solve_pairs(points, elements)
+    columns = elements.columns
+    weight = columns[:, k.E_RADIUS] ** 2 * columns[:, k.E_CHORD] * columns[:, k.E_WIDTH]
+    weight = weight / weight.sum()
+    outside = np.maximum(state[k.S_OUTSIDE], columns[:, k.E_OUTSIDE])
+    return RotorSolution(
+        thrust_per_density=state[k.S_THRUST].sum(axis=-1),
+        torque_per_density=state[k.S_TORQUE].sum(axis=-1),
+        stalled_share=state[k.S_STALLED] @ weight,
+        outside_polar_share=outside @ weight,
+        low_reynolds_share=state[k.S_LOW_RE] @ weight,
+        status=state[k.S_STATUS].max(axis=-1).astype(np.int16),
+        radial=_radial(points, elements, state) if radial else None,
+    )
+
+
+def solve_pairs(points: FloatArray, elements: BladeElements) -> FloatArray:
+    """Solve every element at every point; nothing is checked or added up.
+
+    Parameters
+    ----------
+    points : numpy.ndarray, shape (n, kernels.P_COLUMNS)
+        Contiguous.
+    elements : BladeElements
+
+    Returns
+    -------
+    numpy.ndarray, shape (kernels.S_ROWS, n, n_elements)
+    """
+    n_points, n_elements = points.shape[0], elements.columns.shape[0]
+    state = np.empty((k.S_ROWS, n_points * n_elements))
+    common = (
         points,
         elements.columns,
         elements.polars,
@@ -112,17 +131,36 @@ def solve(
         elements.ln_reynolds,
         _loss_table(),
         elements.blades,
-        results,
-        loading,
-        np.empty(k.scratch_size(points.shape[0], elements.columns.shape[0])),
-        np.empty(2 * k.LANES, dtype=np.int64),
+        state,
     )
-    return RotorSolution(
-        thrust_per_density=results[:, k.R_THRUST],
-        torque_per_density=results[:, k.R_TORQUE],
-        stalled_share=results[:, k.R_STALLED],
-        outside_polar_share=results[:, k.R_OUTSIDE],
-        low_reynolds_share=results[:, k.R_LOW_RE],
-        status=results[:, k.R_STATUS].astype(np.int16),
-        radial=loading if radial else None,
-    )
+    k.solve_lanes(*common, np.empty(k.scratch_size(n_points, n_elements)), np.empty(2 * k.LANES, dtype=np.int64))
+    if (state[k.S_STATUS] <= 0.0).any():
+        k.prove_roots(*common)
+        if (state[k.S_STATUS] <= 0.0).any():
+            k.search_roots(*common)
+    return state.reshape(k.S_ROWS, n_points, n_elements)
+
+
+def _radial(points: FloatArray, elements: BladeElements, state: FloatArray) -> dict[str, FloatArray]:
+    columns = elements.columns
+    airspeed = points[:, k.P_AIRSPEED, None]
+    turning = points[:, k.P_OMEGA, None] * columns[:, k.E_RADIUS]
+    undisturbed = np.arctan2(airspeed, turning)
+    inflow = undisturbed + state[k.S_PSI]
+    speed = state[k.S_SPEED] * np.hypot(airspeed, turning)
+    sine = np.sin(inflow)
+    return {
+        "inflow_angle": inflow,
+        "angle_of_attack": columns[:, k.E_TWIST] - inflow,
+        "section_lift_coefficient": state[k.S_LIFT],
+        "section_drag_coefficient": state[k.S_DRAG],
+        "axial_induced_velocity": speed * sine - airspeed,
+        "tangential_induced_velocity": turning - speed * np.cos(inflow),
+        "thrust_loading": state[k.S_THRUST] / columns[:, k.E_WIDTH],
+        "torque_loading": state[k.S_TORQUE] / columns[:, k.E_WIDTH],
+        "speed": speed,
+        "end_loss": 0.25 * state[k.S_X4] / np.maximum(np.abs(sine), 1e-300),
+        "high_induction": state[k.S_INDUCTION],
+        "status": state[k.S_STATUS],
+        "evaluations": state[k.S_EVALUATIONS],
+    }

@@ -17,7 +17,7 @@ from bemt.quantities.registry import LOOKUP, RADIAL, TABLE
 from bemt.rotor import kernels
 from bemt.rotor.elements import BladeElements, blade_elements
 from bemt.rotor.model import Model
-from bemt.rotor.solution import RADIAL_COLUMNS, RotorSolution, solve
+from bemt.rotor.solution import RotorSolution, solve
 from bemt.table.coefficients import efficiency, figure_of_merit
 from bemt.table.grid import Grid
 from bemt.table.lookup import REFERENCE_RADIUS, Lookup
@@ -162,8 +162,9 @@ def build_table(propeller: Propeller, air: Air, model: Model, grid: Grid, *, rad
     }
     if solution.radial is not None:
         shape = (*rpm.shape, elements.r_over_R.size)
-        for name, column in RADIAL_COLUMNS.items():
-            along = solution.radial[:, :, column].reshape(shape)
+        for quantity in RADIAL:
+            name = quantity.name
+            along = solution.radial[name].reshape(shape)
             if name in _ANGLES:
                 along = np.degrees(along)
             elif name in _LOADINGS:
