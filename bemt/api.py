@@ -59,7 +59,7 @@ def _attributes(case: Case) -> dict[str, str | float | int]:
     return found
 
 
-def coefficient_table(case: Case, *, radial: bool = False) -> xr.Dataset:
+def coefficient_table(case: Case, *, radial: bool = False, lookup: bool = True) -> xr.Dataset:
     """Solve the propeller of a case over its grid.
 
     Parameters
@@ -68,6 +68,8 @@ def coefficient_table(case: Case, *, radial: bool = False) -> xr.Dataset:
         From `load`.
     radial : bool, optional
         Also return the loading along the blade, over `r_over_R`.
+    lookup : bool, optional
+        Whether `.propeller` is to answer look-ups; without, the table is ready sooner.
 
     Returns
     -------
@@ -82,7 +84,8 @@ def coefficient_table(case: Case, *, radial: bool = False) -> xr.Dataset:
     """
     from bemt.table.build import build_table
 
-    return build_table(case.propeller, case.air, case.model, case.grid, radial=radial).to_dataset(_attributes(case))
+    result = build_table(case.propeller, case.air, case.model, case.grid, radial=radial, lookup=lookup)
+    return result.to_dataset(_attributes(case))
 
 
 def envelope(case: Case, *, table: xr.Dataset | None = None) -> xr.Dataset:

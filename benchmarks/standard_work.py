@@ -213,6 +213,31 @@ class Ours:
         # The yardstick knows no Mach number: sound without end.
         return solve(self._elements, self._airspeed, self._angular_speed, work.viscosity / work.density, np.inf)
 
+    def solve_batch(self, pitches: FloatArray) -> FloatArray:
+        """Solve the tables of several pitches in one call of the kernels, as a sweep would.
+
+        Parameters
+        ----------
+        pitches : numpy.ndarray, shape (n,)
+            Of the blades [m].
+
+        Returns
+        -------
+        numpy.ndarray, shape (kernels.S_ROWS, n_j, n * n_elements)
+            The kernels' own result, every element of every table.
+        """
+        from dataclasses import replace
+
+        from bemt.rotor.solution import solve_pairs
+
+        work = self._work
+        columns = np.tile(self._elements.columns, (pitches.size, 1))
+        columns[:, self._twist] = np.arctan(pitches[:, None] / (2.0 * np.pi * work.radius)).ravel()
+        points = np.empty((work.advance_ratio.size, 4))
+        points[:] = 0.0, self._angular_speed, work.density / work.viscosity, 0.0
+        points[:, 0] = self._airspeed
+        return solve_pairs(points, replace(self._elements, columns=columns))
+
     def checksum(self) -> float:
         """Return the sum of CT + CQ over the standard table."""
         solution = self.solve(self._work.pitch)

@@ -229,10 +229,12 @@ def element_bounds(polars: FloatArray, stall: FloatArray) -> FloatArray:
     bounds = np.empty((*lift.shape[:-1], k.B_COLUMNS))
     bounds[..., k.B_RISE_LOW] = angles[before]
     bounds[..., k.B_RISE_HIGH] = angles[after]
+    bounds[..., k.B_RISE_LIFT] = np.take_along_axis(lift, after[..., None], -1)[..., 0]
     beyond = cells >= after[..., None]
     bounds[..., k.B_FALL_HIGH] = np.where(beyond, fall, 0.0).max(axis=-1) / step
     climb = np.diff(lift, axis=-1) + np.abs(np.diff(drag, axis=-1))
     bounds[..., k.B_CLIMB_HIGH] = np.where(beyond, climb, 0.0).max(axis=-1) / step
+    bounds[..., k.B_CLIMB_LOW] = np.where(cells < before[..., None], climb, 0.0).max(axis=-1) / step
     bounds[..., k.B_FALL_LOW] = np.where(cells < before[..., None], fall, 0.0).max(axis=-1) / step
     bounds[..., k.B_TROUGH_FROM], bounds[..., k.B_TROUGH_TO], bounds[..., k.B_TROUGH_LIFT] = _troughs(
         lift, drag, angles, after

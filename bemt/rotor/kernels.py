@@ -85,7 +85,9 @@ B_PEAK_LIFT = 12  # largest lift above the rise
 B_CALM_FROM = 13  # above this angle, well past stall, ...
 B_CALM_FALL = 14  # ... -dcl/dalpha + |dcd/dalpha|/2 is no more than this [1/rad]
 B_PEAK_AT = 15  # angle of the largest lift above the rise, below 45 deg
-B_COLUMNS = 16
+B_CLIMB_LOW = 16  # steepest climb of lift (and change of drag) below the rise [1/rad]
+B_RISE_LIFT = 17  # lift at the upper end of the rise
+B_COLUMNS = 18
 
 # Columns of the point array.
 P_AIRSPEED = 0  # V at the disk [m/s]
@@ -547,7 +549,9 @@ def _search(side, windmill, start, end, alpha_0, s0, c0, element, polar, bounds,
     sigma = element[E_SOLIDITY]
     fall = pg * max(_bound(bounds, row, B_FALL_LOW, True), _bound(bounds, row, B_FALL_HIGH, True)) + 4.0 * (pg - 1.0)
     climb = pg * _bound(bounds, row, B_CLIMB_HIGH, True) + 4.0 * (pg - 1.0)
+    climb_low = pg * _bound(bounds, row, B_CLIMB_LOW, True) + 4.0 * (pg - 1.0)
     rise_high = _bound(bounds, row, B_RISE_HIGH, False)
+    rise_low = _bound(bounds, row, B_RISE_LOW, True)
     here = start
     value, drag, x4, _ = _any_residual(windmill, here, alpha_0, s0, c0, element, polar, row, weight, pg, rise, loss)
     evaluations = 1
@@ -557,8 +561,17 @@ def _search(side, windmill, start, end, alpha_0, s0, c0, element, polar, bounds,
         step = abs(alpha_0 + math.pi - cell * knot - here)
         x = x4 / sigma
         sine, cosine = math.sin(here), math.cos(here)
-        # On Buhl's side only where a stays below 0.4 for any force a section can have.
-        if not windmill or (s0 * cosine + c0 * sine) * x > 6.5:
+        s = s0 * cosine + c0 * sine
+        if side < 0 and s * x > 6.5:
+            # Far from Buhl's branch for any force a section can have. Outward alpha rises and X falls, so -h grows by
+            # no more than cl' + (1 + tan^2)(cd + X) + |tan| (|cd'| + X cot phi).
+            tangent = (abs(sine) + 0.1 * cosine) / (cosine - 0.1 * abs(sine))
+            deep = rise_low - alpha_0 + here
+            steep = (climb_low if deep > 0.0 else 8.0 * pg) + 1.05 * (1.0 + tangent * tangent) * (x + drag)
+            steep += tangent * (x * max(c0 * cosine - s0 * sine, 0.0) / s + 2.0)
+            reach = min(0.8 * abs(value) / (sigma * cosine * steep), 0.1)
+            step = max(step, min(reach, deep) if deep > 0.0 else reach)
+        elif not windmill:
             separated = side > 0 and alpha_0 - here > rise_high
             steep = (climb if separated else 8.0 * pg) + 2.0 * (drag + x + 1.0) / (cosine * cosine)
             reach = 0.5 * abs(value) / (sigma * cosine * steep)
@@ -600,7 +613,7 @@ def _another_beyond(side, windmill, psi, alpha_0, phi_0, s0, c0, element, polar,
     evaluations = 0
     first = True
     while abs(here) < abs(end):
-        step = 4.0 * cell if propeller else 8.0 * cell
+        step = 4.0 * cell if propeller else max(4.0 * cell, 0.15 * abs(end - psi))
         if propeller and phi_0 + here < 0.5 * math.pi and here < 0.25 * math.pi:
             sine, cosine = _sine_cosine(here)
             s = s0 * cosine + c0 * sine
@@ -887,6 +900,7 @@ LANES = 64
     _W_LOW,
     _W_HIGH,
     _W_LIFT_0,
+    _W_RISE_LIFT,
     _W_RISE_LOW,
     _W_FALL_LOW,
     _W_FALL_HIGH,
@@ -906,7 +920,7 @@ LANES = 64
     _W_TORQUE,
     _W_RISE_HIGH,
     _W_END,
-) = range(0, 74 * LANES, LANES)
+) = range(0, 75 * LANES, LANES)
 
 
 @_jit
@@ -1205,6 +1219,7 @@ def _lanes_guess(n, w, index, polars, bounds, ln_reynolds, angle_scale, last):
         w[_W_CELL_SHARE + i] = place - cell
         bound = index[i]
         w[_W_RISE_HIGH + i] = min(bounds[bound, row, B_RISE_HIGH], bounds[bound, row + 1, B_RISE_HIGH])
+        w[_W_RISE_LIFT + i] = bounds[bound, row, B_RISE_LIFT]
     for i in range(n):
         sigma = w[_W_SIGMA + i]
         lift = w[_W_LIFT_LEFT + i] + w[_W_CELL_SHARE + i] * w[_W_LIFT_STEP + i]
@@ -1223,11 +1238,15 @@ def _lanes_guess(n, w, index, polars, bounds, ln_reynolds, angle_scale, last):
         loss = min(tip * (0.9 - tip_square * (0.14 - 0.015 * tip_square)), 1.0)
         loss *= min(root * (0.9 - root_square * (0.14 - 0.015 * root_square)), 1.0)
         x4 = 4.0 * loss * s0
+        # Beyond stall: the line on which lift would fall from where it stops rising, should the root be attached.
         stalled = w[_W_ALPHA_0 + i] - w[_W_RISE_HIGH + i]
-        b = sigma * (climb + (0.1 if stalled > 0.0 else 0.03)) + x4
-        q = 4.0 * loss * c0 if lift > 0.0 else 0.0
-        psi = 2.0 * sigma * lift / (b + math.sqrt(b * b + 4.0 * max(q * sigma * lift, 0.0)))
-        psi = stalled if lift > 0.0 and psi < stalled < 0.7 and x4 < 10.0 * sigma else psi
+        beyond = stalled > 0.0 and lift > 0.0
+        climb = 5.5 if beyond else climb
+        line = w[_W_RISE_LIFT + i] + 5.5 * stalled if beyond else lift
+        b = sigma * (climb + 0.03) + x4
+        root = math.sqrt(max(b * b + 16.0 * loss * c0 * sigma * line, 0.25 * b * b))
+        psi = 2.0 * sigma * line / (b + root)
+        psi = stalled if beyond and psi < stalled < 0.7 else psi
         w[_W_PSI + i] = min(max(psi, -0.7), 0.7)
         w[_W_SPEED + i] = max(1.0 - 0.5 * psi * psi, 0.75)
         w[_W_LOW + i] = 0.0 if lift > 0.0 else -0.78

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from functools import lru_cache
 
@@ -14,6 +15,23 @@ from bemt.rotor import kernels as k
 from bemt.rotor.elements import BladeElements
 
 FloatArray = NDArray[np.float64]
+
+_BLOCK = 1024  # points solved at a time: bounds the memory, and is what threads share
+_RADIAL_NAMES = (
+    "inflow_angle",
+    "angle_of_attack",
+    "section_lift_coefficient",
+    "section_drag_coefficient",
+    "axial_induced_velocity",
+    "tangential_induced_velocity",
+    "thrust_loading",
+    "torque_loading",
+    "speed",
+    "end_loss",
+    "high_induction",
+    "status",
+    "evaluations",
+)
 
 
 @dataclass(frozen=True, eq=False)
@@ -57,6 +75,7 @@ def solve(
     speed_of_sound: ArrayLike,
     *,
     radial: bool = False,
+    workers: int = 1,
 ) -> RotorSolution:
     """Solve the blade-element momentum equations at a list of operating points.
 
@@ -72,6 +91,8 @@ def solve(
         [m2/s], [m/s].
     radial : bool
         Keep what each element does.
+    workers : int
+        Threads that share the points; the result is the same to the last bit.
 
     Returns
     -------
@@ -92,6 +113,32 @@ def solve(
         raise InputError("operating point", "airspeed, rotational speed and air must be finite and not negative")
     if (points[:, k.P_AIRSPEED] + points[:, k.P_OMEGA] <= 0).any():
         raise InputError("operating point", "neither airspeed nor rotation: nothing to solve")
+    blocks = [points[start : start + _BLOCK] for start in range(0, points.shape[0], _BLOCK)]
+    if workers > 1 and len(blocks) > 1:
+        with ThreadPoolExecutor(workers) as pool:
+            parts = list(pool.map(lambda block: _add_up(block, elements, radial), blocks))
+    else:
+        parts = [_add_up(block, elements, radial) for block in blocks]
+    if len(parts) == 1:
+        return parts[0]
+    joined = {
+        name: np.concatenate([getattr(part, name) for part in parts])
+        for name in (
+            "thrust_per_density",
+            "torque_per_density",
+            "stalled_share",
+            "outside_polar_share",
+            "low_reynolds_share",
+            "status",
+        )
+    }
+    along = None
+    if radial:
+        along = {name: np.concatenate([part.radial[name] for part in parts if part.radial]) for name in _RADIAL_NAMES}
+    return RotorSolution(**joined, radial=along)
+
+
+def _add_up(points: FloatArray, elements: BladeElements, radial: bool) -> RotorSolution:
     state = solve_pairs(points, elements)
     columns = elements.columns
     weight = columns[:, k.E_RADIUS] ** 2 * columns[:, k.E_CHORD] * columns[:, k.E_WIDTH]
@@ -149,18 +196,19 @@ def _radial(points: FloatArray, elements: BladeElements, state: FloatArray) -> d
     inflow = undisturbed + state[k.S_PSI]
     speed = state[k.S_SPEED] * np.hypot(airspeed, turning)
     sine = np.sin(inflow)
-    return {
-        "inflow_angle": inflow,
-        "angle_of_attack": columns[:, k.E_TWIST] - inflow,
-        "section_lift_coefficient": state[k.S_LIFT],
-        "section_drag_coefficient": state[k.S_DRAG],
-        "axial_induced_velocity": speed * sine - airspeed,
-        "tangential_induced_velocity": turning - speed * np.cos(inflow),
-        "thrust_loading": state[k.S_THRUST] / columns[:, k.E_WIDTH],
-        "torque_loading": state[k.S_TORQUE] / columns[:, k.E_WIDTH],
-        "speed": speed,
-        "end_loss": 0.25 * state[k.S_X4] / np.maximum(np.abs(sine), 1e-300),
-        "high_induction": state[k.S_INDUCTION],
-        "status": state[k.S_STATUS],
-        "evaluations": state[k.S_EVALUATIONS],
-    }
+    values = (
+        inflow,
+        columns[:, k.E_TWIST] - inflow,
+        state[k.S_LIFT],
+        state[k.S_DRAG],
+        speed * sine - airspeed,
+        turning - speed * np.cos(inflow),
+        state[k.S_THRUST] / columns[:, k.E_WIDTH],
+        state[k.S_TORQUE] / columns[:, k.E_WIDTH],
+        speed,
+        0.25 * state[k.S_X4] / np.maximum(np.abs(sine), 1e-300),
+        state[k.S_INDUCTION],
+        state[k.S_STATUS],
+        state[k.S_EVALUATIONS],
+    )
+    return dict(zip(_RADIAL_NAMES, values, strict=True))

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import os
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
@@ -68,7 +69,7 @@ class TableResult:
     values : mapping of str to numpy.ndarray
         Coefficients, shares, grades and status over (rpm, advance_ratio); figure of merit, zero-thrust advance ratio
         and peak efficiency over rpm; with a radial table also what each element does, angles in degrees.
-    lookup : Lookup
+    lookup : Lookup or None
         Serves any airspeed, rpm and density.
     r_over_R : numpy.ndarray, shape (n_elements,), or None
         Of the radial table.
@@ -79,7 +80,7 @@ class TableResult:
     rpm: FloatArray
     advance_ratio: FloatArray
     values: Mapping[str, NDArray[Any]]
-    lookup: Lookup
+    lookup: Lookup | None
     r_over_R: FloatArray | None = None
     notes: tuple[str, ...] = ()
 
@@ -98,7 +99,7 @@ class TableResult:
         """
         import bemt.table.accessor  # noqa: F401 - registers `.propeller`
 
-        lookup_values, lookup_axes, lookup_attrs = self.lookup.variables()
+        lookup_values, lookup_axes, lookup_attrs = self.lookup.variables() if self.lookup else ({}, {}, {})
         coordinates = {"rpm": self.rpm, "advance_ratio": self.advance_ratio, **lookup_axes}
         if self.r_over_R is not None:
             coordinates["r_over_R"] = self.r_over_R
@@ -107,7 +108,9 @@ class TableResult:
         return build_dataset(TABLE + RADIAL + LOOKUP, {**self.values, **lookup_values}, coordinates, merged)
 
 
-def build_table(propeller: Propeller, air: Air, model: Model, grid: Grid, *, radial: bool = False) -> TableResult:
+def build_table(
+    propeller: Propeller, air: Air, model: Model, grid: Grid, *, radial: bool = False, lookup: bool = True
+) -> TableResult:
     """Solve a propeller over a grid of rpm and advance ratio, and over all of its look-up table.
 
     Parameters
@@ -120,6 +123,8 @@ def build_table(propeller: Propeller, air: Air, model: Model, grid: Grid, *, rad
         Points that are solved, not interpolated.
     radial : bool
         Also keep what each blade element does at the points of the grid.
+    lookup : bool
+        Also solve the look-up table, which takes most of the time.
 
     Returns
     -------
@@ -131,7 +136,6 @@ def build_table(propeller: Propeller, air: Air, model: Model, grid: Grid, *, rad
         If the propeller and its section data do not fit each other.
     """
     elements = blade_elements(propeller, model)
-    lookup = _solve_lookup(elements, propeller, air)
     rpm, advance_ratio = np.broadcast_arrays(grid.rpm[:, None], grid.advance_ratio)
     points = _Points.solve(elements, propeller.diameter, air, rpm, advance_ratio, radial=radial)
     solution = points.solution
@@ -141,7 +145,7 @@ def build_table(propeller: Propeller, air: Air, model: Model, grid: Grid, *, rad
         solution.stalled_share.reshape(rpm.shape),
         solution.outside_polar_share.reshape(rpm.shape),
         solution.low_reynolds_share.reshape(rpm.shape),
-        tip_mach - lookup.tip_divergence_mach,
+        tip_mach - _tip_divergence(elements),
         section_guessed=propeller.section_guessed,
     )
     speed_75 = np.hypot(points.airspeed, REFERENCE_RADIUS * math.pi * rpm / 60.0 * propeller.diameter)
@@ -150,7 +154,7 @@ def build_table(propeller: Propeller, air: Air, model: Model, grid: Grid, *, rad
         "torque_coefficient": points.power_coefficient / (2.0 * math.pi),
         "power_coefficient": points.power_coefficient,
         "efficiency": efficiency(advance_ratio, points.thrust_coefficient, points.power_coefficient),
-        "reference_reynolds": speed_75 * lookup.chord_75 / air.kinematic_viscosity,
+        "reference_reynolds": speed_75 * elements.chord_75 / air.kinematic_viscosity,
         "helical_tip_mach": tip_mach,
         "stalled_share": solution.stalled_share.reshape(rpm.shape),
         "outside_polar_share": solution.outside_polar_share.reshape(rpm.shape),
@@ -174,7 +178,7 @@ def build_table(propeller: Propeller, air: Air, model: Model, grid: Grid, *, rad
         rpm=grid.rpm,
         advance_ratio=grid.advance_ratio,
         values=values,
-        lookup=lookup,
+        lookup=_solve_lookup(elements, propeller, air) if lookup else None,
         r_over_R=elements.r_over_R if radial else None,
         notes=_notes(elements),
     )
@@ -282,6 +286,10 @@ class _Points:
 _Solver = Callable[[FloatArray], _Points]
 
 
+def _tip_divergence(elements: BladeElements) -> float:
+    return divergence_at_lift(float(elements.columns[-1, kernels.E_DIVERGENCE]))
+
+
 def _solve_lookup(elements: BladeElements, propeller: Propeller, air: Air) -> Lookup:
     at_sound = elements.chord_75 * air.speed_of_sound / air.kinematic_viscosity
     reynolds = _reynolds_nodes(elements, _SLOWEST * at_sound / _DENSITY_MARGIN, _FASTEST * at_sound * _DENSITY_MARGIN)
@@ -302,7 +310,7 @@ def _solve_lookup(elements: BladeElements, propeller: Propeller, air: Air) -> Lo
         diameter=propeller.diameter,
         chord_75=elements.chord_75,
         air=air,
-        tip_divergence_mach=divergence_at_lift(float(elements.columns[-1, kernels.E_DIVERGENCE])),
+        tip_divergence_mach=_tip_divergence(elements),
         section_guessed=propeller.section_guessed,
     )
 
@@ -322,6 +330,7 @@ def _solve_similar(
         np.where(still, 0.0, np.cos(helix)) / (REFERENCE_RADIUS * elements.tip_radius),
         elements.chord_75 / reynolds,
         1.0 / np.maximum(mach, 1e-9),
+        workers=min(os.cpu_count() or 1, 8),
     )
 
 
