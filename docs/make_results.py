@@ -7,6 +7,7 @@ Everything below the marker line is replaced; a test holds the page to the regis
 
 from __future__ import annotations
 
+import textwrap
 from collections.abc import Iterator, Mapping
 from pathlib import Path
 
@@ -96,7 +97,7 @@ def generated() -> str:
         ["", "At the named points the same names with the prefix `point_` over `point`, and:", ""],
         rows(own_point),
         ["", "Without a motor the axes are `airspeed` and `rpm`, and what remains is:", ""],
-        [", ".join(f"`{quantity.name}`" for quantity in without) + ","],
+        textwrap.wrap(", ".join(f"`{quantity.name}`" for quantity in without) + ",", 120),
         ["with `level_` and `point_` accordingly, `drag`, `climb_rate`, `point_airspeed` and `point_climb_rate`."],
     ]
     assert set(repeated) == {quantity.name for quantity in grid}

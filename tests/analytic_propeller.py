@@ -11,6 +11,8 @@ from typing import Any
 
 import numpy as np
 
+from bemt.air import Air, standard_air
+
 
 @dataclass(frozen=True, eq=False)
 class AnalyticLoads:
@@ -30,6 +32,12 @@ class AnalyticPropeller:
     power: tuple[float, float, float] = (0.042, 0.020, -0.100)
     known_to_rpm: float = math.inf
     known_from_rpm: float = 0.0
+    tip_divergence_mach: float = math.inf
+    section_guessed: bool = False
+
+    @property
+    def air(self) -> Air:
+        return standard_air()
 
     def loads(self, airspeed: Any, rpm: Any, air: Any = None) -> AnalyticLoads:
         airspeed, rpm = np.broadcast_arrays(np.asarray(airspeed, float), np.asarray(rpm, float))

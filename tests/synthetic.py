@@ -64,8 +64,11 @@ def coefficient_table(
     return build_dataset(TABLE + RADIAL + LOOKUP, values, coordinates, ATTRS)
 
 
-def envelope(*, limits: bool = True) -> xr.Dataset:
-    """An envelope in the shape of the real one: smooth made-up laws, every limit of the case set and some crossed."""
+def envelope(*, limits: bool = True, winding: bool = False) -> xr.Dataset:
+    """An envelope in the shape of the real one: smooth made-up laws, every limit of the case set and some crossed.
+
+    With a winding it gets too hot beyond 42 A or so, and hotter without end beyond 44 A.
+    """
     V, throttle = np.linspace(0.0, 30.0, 61), np.linspace(0.1, 1.0, 19)
     pitch_speed = 36.0 * throttle[None, :]
     ratio = V[:, None] / pitch_speed
@@ -87,8 +90,14 @@ def envelope(*, limits: bool = True) -> xr.Dataset:
         "overall_efficiency": np.clip(0.55 * ratio * (1.9 - ratio), 0, 0.55),
         "outside_polar_share": np.zeros_like(rpm),
         "stalled_share": np.zeros_like(rpm),
+        "low_reynolds_share": np.clip(1 - rpm / 5600.0, 0, 1),
+        "trust": np.where(rpm < 5040.0, 2, 3).astype(np.int16),
+        "trust_reasons": np.where(rpm < 5040.0, 4, 0).astype(np.int16),
         "status": np.ones_like(rpm, dtype=np.int16),
     }
+    if winding:
+        grid["winding_temperature"] = np.where(motor < 44.0, 15.0 + 0.05 * motor**2, np.inf)
+        grid["winding_temperature_margin"] = 120.0 - grid["winding_temperature"]
     if limits:
         grid |= {
             "rpm_margin": 9500 - rpm,
@@ -105,7 +114,10 @@ def envelope(*, limits: bool = True) -> xr.Dataset:
             needed[i] = np.interp(wanted, thrust[i], throttle)
             for name in grid:
                 level[name][i] = np.interp(needed[i], throttle, np.asarray(grid[name], dtype=float)[i])
-    level["status"] = np.where(np.isfinite(needed), 1, 0).astype(np.int16)
+    flown = np.isfinite(needed)
+    level["status"] = np.where(flown, 1, 0).astype(np.int16)
+    level["trust"] = np.where(flown, np.where(level["rpm"] < 5040.0, 2, 3), 0).astype(np.int16)
+    level["trust_reasons"] = np.where(level["rpm"] < 5040.0, 4, 0).astype(np.int16)
     values: dict[str, np.ndarray[Any, Any]] = {**grid, **{f"level_{name}": array for name, array in level.items()}}
     endurance = 4.0 * 3600 / level["battery_current"]
     values |= {

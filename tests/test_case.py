@@ -437,6 +437,13 @@ def test_default_rpm_without_a_limit_is_a_tip_mach_number(tmp_path: Path) -> Non
     rotation, forward = math.pi, case.grid.advance_ratio[-1]
     mach = case.grid.rpm[-1] / 60 * 0.3 * math.hypot(rotation, forward) / case.air.speed_of_sound
     assert 0.59 < mach <= 0.6
+    (note,) = [note for note in case.notes if "default" in note]
+    assert note == (f"rpm up to {case.grid.rpm[-1]:g} is a default (helical tip Mach number 0.6), no rpm_limit given")
+
+
+def test_rpm_that_somebody_gave_are_no_default(tmp_path: Path) -> None:
+    for text in (CASE.replace("rpm_limit = 10000\n", ""), CASE.partition("[grid]")[0]):
+        assert not any("default (helical" in note for note in load_case(write_case(tmp_path, text)).notes)
 
 
 def test_axes_as_lists_and_ranges(tmp_path: Path) -> None:

@@ -33,8 +33,8 @@ def calls(monkeypatch: pytest.MonkeyPatch) -> list[str]:
         seen.append(f"load {path}")
         return "the case"
 
-    def coefficient_table(case: str, *, radial: bool = False) -> xr.Dataset:
-        seen.append(f"table {case}, radial {radial}")
+    def coefficient_table(case: str, *, radial: bool = False, lookup: bool = True) -> xr.Dataset:
+        seen.append(f"table {case}, radial {radial}, lookup {lookup}")
         return synthetic.coefficient_table(radial=radial).assign_attrs(notes="the section was guessed")
 
     def envelope(case: str) -> xr.Dataset:
@@ -66,6 +66,19 @@ def test_without_a_file_the_short_table_is_all_of_stdout(calls: list[str], case:
     assert calls[0] == "load case.toml"
 
 
+def test_lithium_is_spoken_of_only_where_there_is_a_battery(
+    calls: list[str], case: str, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    run = synthetic.envelope()
+    bare = run.drop_vars([name for name in run.data_vars if "battery" in str(name) or "motor" in str(name)])
+    monkeypatch.setattr(bemt, "envelope", lambda _: bare)
+    result = CliRunner().invoke(envelope_command, [case])
+    assert result.exit_code == 0
+    assert "Lithium" not in result.stderr
+    assert "plane of a turning propeller" in result.stderr
+    assert "local rules" in result.stderr
+
+
 def test_notes_of_a_result_are_said_on_stderr(calls: list[str], case: str) -> None:
     result = CliRunner().invoke(table_command, [case])
     assert "Note: the section was guessed\n" in result.stderr
@@ -79,7 +92,7 @@ def test_files_take_the_place_of_the_printed_table(calls: list[str], case: str, 
     assert result.exit_code == 0
     assert result.stdout == ""
     assert "Wrote a.nc, a.csv, a_rpm.csv, a_radial.csv, a.svg." in result.stderr
-    assert calls[1] == "table the case, radial True"
+    assert calls[1] == "table the case, radial True, lookup True"
     assert sorted(path.name for path in tmp_path.iterdir()) == [
         "a.csv", "a.nc", "a.svg", "a_radial.csv", "a_rpm.csv", "case.toml",
     ]  # fmt: skip

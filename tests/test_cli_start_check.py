@@ -177,6 +177,8 @@ def test_check_tells_that_the_section_is_a_guess(tmp_path: Path) -> None:
     code, out, err = run("check", case)
     assert code == 0
     assert "a guess" in out
+    assert not any(line.lstrip().startswith("%") for line in out.splitlines())  # a number keeps its unit
+    assert "\u00a0" not in out
     assert "Note: the section of the blade is a guess" in err
 
 

@@ -12,7 +12,9 @@ import pytest
 import synthetic
 import xarray as xr
 from matplotlib.backends.backend_agg import FigureCanvasAgg
+from matplotlib.colors import to_rgb
 from matplotlib.figure import Figure
+from matplotlib.lines import Line2D
 from matplotlib.text import Text
 from scipy.optimize import isotonic_regression
 
@@ -40,6 +42,7 @@ FIGURES = {
     "one rpm": lambda: coefficient_figure(synthetic.coefficient_table(rpm=(4000.0,))),
     "hard coefficients": lambda: coefficient_figure(hard_table()),
     "envelope": lambda: envelope_figure(synthetic.envelope()),
+    "winding": lambda: envelope_figure(synthetic.envelope(winding=True)),
     "no limits": lambda: envelope_figure(synthetic.envelope(limits=False)),
     "long title": lambda: envelope_figure(synthetic.envelope().assign_attrs(title="Survey of the mudflats " * 9)),
 }
@@ -128,6 +131,49 @@ def test_every_point_of_the_table_is_on_its_line() -> None:
             if np.isfinite(value):
                 assert (float(table["advance_ratio"].values[j]), value) in vertices
         assert axes.get_ylabel().startswith(by_name(TABLE)[name].long_name)
+
+
+def test_efficiency_comes_down_to_zero_where_the_thrust_ends() -> None:
+    table = synthetic.coefficient_table(rpm=(3000.0, 6000.0), count=15)
+    axes = coefficient_figure(table).axes[2]
+    vertices = [tuple(row) for c in axes.collections for path in c.get_paths() for row in path.vertices]
+    for end in table["zero_thrust_advance_ratio"].values:
+        assert (float(end), 0.0) in vertices
+        assert max(J for J, _ in vertices if J <= end) == end
+        # The added end is no point of the table, and carries no mark.
+        assert not any(end in line.get_xdata() for line in axes.lines if line.get_linestyle() == "None")
+    # Nothing is added where the thrust does not end within the table.
+    short = coefficient_figure(table.isel(advance_ratio=slice(0, 8))).axes[2]
+    assert (
+        max(row[0] for c in short.collections for path in c.get_paths() for row in path.vertices)
+        == (table["advance_ratio"].values[7])
+    )
+
+
+def test_the_legend_of_an_envelope_borrows_no_lines_colour() -> None:
+    figure = envelope_figure(synthetic.envelope())
+    (legend,) = figure.legends
+    drawn = dict(zip([text.get_text() for text in legend.get_texts()], legend.legend_handles, strict=True))
+    throttles = set(ramp(5))
+    assert throttles <= {line.get_color() for line in figure.axes[0].lines}
+    # The entry of the throttle shows all of their colours, and no other entry shows one of them.
+    assert throttles <= {line.get_color() for line in legend.findobj(Line2D)}
+    assert "throttle, low to high" in drawn
+    for name in ("beyond a limit", "level flight (drag)"):
+        assert to_rgb(drawn[name].get_color()) not in throttles
+
+
+def test_a_winding_too_hot_is_marked_and_a_missing_point_is_none() -> None:
+    run = synthetic.envelope(winding=True)
+    for name in [str(name) for name in run.data_vars if str(name).startswith("point_")]:
+        if run[name].dtype.kind == "f":
+            run[name] = run[name].where(run["point"] != "top_speed")
+    texts = [text for text, _ in drawn_texts(envelope_figure(run))]
+    assert "no end !" in texts
+    assert "none" in texts
+    assert "top speed" in texts  # in the table; not in the legend, which speaks of marks that are drawn
+    assert texts.count("top speed") == 1
+    assert any("winding above 120 °C" in text for text in texts)
 
 
 def test_poor_trust_is_dotted_and_hollow_and_good_is_not() -> None:

@@ -17,7 +17,8 @@ import bemt
 from bemt.errors import InputError, RunError
 from bemt.files import check_data_target, read, write
 from bemt.files.text import coefficient_text, envelope_text, unconverged
-from bemt.quantities.registry import ENVELOPE, LOOKUP, RADIAL, TABLE, TRUST_REASONS, by_name
+from bemt.quantities.dataset import build_dataset
+from bemt.quantities.registry import ENVELOPE, ENVELOPE_WITHOUT_MOTOR, LOOKUP, RADIAL, TABLE, TRUST_REASONS, by_name
 from bemt.table.grid import Grid
 
 
@@ -203,7 +204,19 @@ def test_printed_table_shows_the_numbers_of_the_dataset() -> None:
     text = coefficient_text(table)
     for i, rpm in enumerate(table["rpm"].values):
         block = text.split(f"{rpm:.0f} rpm:")[1].splitlines()
-        assert f"static figure of merit {float(table['static_figure_of_merit'][i]):.3f}" in block[0]
+        assert block[0] == ""
+        summary = next(line.split() for line in text.splitlines() if line.split()[:1] == [f"{rpm:.0f}"])
+        still = table.isel(rpm=i, advance_ratio=0)
+        assert summary[1:3] == [f"{float(still[name]):.4f}" for name in ("thrust_coefficient", "power_coefficient")]
+        assert summary[3:] == [
+            f"{float(table[name][i]):.3f}"
+            for name in (
+                "static_figure_of_merit",
+                "zero_thrust_advance_ratio",
+                "peak_efficiency",
+                "peak_efficiency_advance_ratio",
+            )
+        ]
         for j in range(5):
             J, CT, CP, eta, grade, *_ = block[2 + j].split()
             here = table.isel(rpm=i, advance_ratio=j)
@@ -218,7 +231,8 @@ def test_printed_table_shows_the_numbers_of_the_dataset() -> None:
 def test_long_printed_tables_are_thinned_and_keep_both_ends() -> None:
     table = synthetic.coefficient_table(rpm=(3000.0,), count=101)
     lines = coefficient_text(table).splitlines()
-    rows = [line.split() for line in lines if line.startswith("  ")][1:]
+    start = lines.index("3000 rpm:")
+    rows = [line.split() for line in lines[start + 2 :] if line.startswith("  ")]
     assert len(rows) <= 17
     assert (rows[0][0], rows[-1][0]) == ("0.000", "1.100")
     assert any(f"{len(rows)} of 101 advance ratios shown" in line for line in lines)
@@ -233,6 +247,66 @@ def test_printed_envelope_marks_what_is_beyond_a_limit() -> None:
     assert "! beyond a limit" in text
     # Nothing is marked where the case sets no limits.
     assert "!" not in envelope_text(synthetic.envelope(limits=False))
+
+
+def test_printed_envelope_shows_the_winding_and_the_trust() -> None:
+    run = synthetic.envelope(winding=True)
+    lines = envelope_text(run).splitlines()
+    heads = lines[2].split()
+    points = {line.split("  ")[0]: line for line in lines[4:10]}
+    place = heads.index("winding")
+    assert run["point_winding_temperature"].values[0] == np.inf
+    assert "no end!" in points["static"]
+    cruise = points["cruise"].split()[1:]
+    assert cruise[place] == f"{float(run['point_winding_temperature'][1]):.0f}"
+    assert {line.split()[-1] for line in points.values()} == {"good", "fair"}
+    fair = [name.replace("_", " ") for name in run["point"].values[run["point_trust"].values == 2]]
+    said = next(line for line in lines if line.startswith("Trust less than good: "))
+    assert said.removeprefix("Trust less than good: ").rstrip(".").split("; ") == [
+        f"{name} (low Reynolds number)" for name in fair
+    ]
+    assert any("marked above 120 degC" in line for line in lines)
+    assert "winding" not in envelope_text(synthetic.envelope()).lower()
+
+
+def test_a_point_that_does_not_exist_is_said_in_a_word() -> None:
+    run = synthetic.envelope()
+    for name in [str(name) for name in run.data_vars if str(name).startswith("point_")]:
+        if run[name].dtype.kind == "f":
+            run[name] = run[name].where(run["point"] != "best_climb")
+    line = next(line for line in envelope_text(run).splitlines() if line.startswith("best climb"))
+    assert line.split() == ["best", "climb", "none"]
+
+
+def test_without_motor_and_airframe_every_rpm_is_printed_over_airspeed() -> None:
+    # Linear thrust and a constant torque: what is printed can be worked out by hand.
+    V, rpm = np.array([0.0, 5.0, 10.0, 15.0, 20.0]), np.array([3000.0, 6000.0])
+    thrust = np.array([[4.0, 8.0], [2.0, 6.0], [-0.5, 4.0], [-2.0, 2.0], [-4.0, 1.0]])
+    torque = np.full((5, 2), 0.125)
+    values = {
+        "thrust": thrust,
+        "torque": torque,
+        "shaft_power": torque * rpm * np.pi / 30,
+        "trust": np.full((5, 2), 2, dtype=np.int16),
+        "status": np.ones((5, 2), dtype=np.int16),
+        "point_rpm": rpm[-1:],
+        "point_thrust": thrust[0, -1:],
+    }
+    coordinates = {"airspeed": V, "rpm": rpm, "point": np.array(["static"])}
+    text = envelope_text(build_dataset(ENVELOPE_WITHOUT_MOTOR, values, coordinates, {}))
+    assert "static" not in text
+    blocks = dict(zip((3000, 6000), text.split(" rpm:\n")[1:], strict=True))
+    first = [line.split() for line in blocks[3000].split("\n\n")[0].splitlines()]
+    assert first[0] == ["V", "thrust", "torque", "shaft", "trust"]
+    # Up to one row beyond the last thrust; 0.125 N m at 3000 rpm are 39.3 W.
+    assert first[2:] == [
+        ["0.0", "4.00", "0.125", "39.3", "fair"],
+        ["5.0", "2.00", "0.125", "39.3", "fair"],
+        ["10.0", "-0.50", "0.125", "39.3", "fair"],
+    ]
+    second = [line.split() for line in blocks[6000].split("\n\n")[0].splitlines()]
+    assert second[-1] == ["20.0", "1.00", "0.125", "78.5", "fair"]
+    assert "Not all airspeeds shown" in text
 
 
 def test_points_that_did_not_converge_are_counted() -> None:

@@ -47,6 +47,10 @@ class Complaints:
         ----------
         file, line, field
             As for `add`.
+
+        Yields
+        ------
+        None
         """
         try:
             yield

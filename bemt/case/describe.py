@@ -15,6 +15,7 @@ from bemt.section.family import family
 _INCH = 0.0254
 _INDENT = 12
 _WIDTH = 100
+_NO_BREAK = "\u00a0"  # keeps a number with its % while lines are wrapped
 _RPM = 30.0 / math.pi
 
 
@@ -52,8 +53,9 @@ def describe(case: Case) -> str:
     for heading, entries in parts:
         for index, entry in enumerate(entries):
             first = f"{heading if index == 0 else '':<{_INDENT}}"
-            lines += textwrap.wrap(entry, _WIDTH, initial_indent=first, subsequent_indent=" " * (_INDENT + 2))
-    return "\n".join(lines)
+            whole = entry.replace(" %", _NO_BREAK + "%")
+            lines += textwrap.wrap(whole, _WIDTH, initial_indent=first, subsequent_indent=" " * (_INDENT + 2))
+    return "\n".join(lines).replace(_NO_BREAK, " ")
 
 
 def _propeller(case: Case) -> list[str]:

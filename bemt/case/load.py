@@ -269,7 +269,7 @@ class _Loader:
                 yield ((name, index) if isinstance(written, list) else (name,)), table
 
     def refuse_later_work(self) -> bool:
-        """Refuse what this version would silently leave out ; return whether all is honoured."""
+        """Refuse what this version would silently leave out; return whether all is honoured."""
         before = len(self.complaints)
         for (section, key), (what, instead) in _LATER_KEYS.items():
             for path, table in self.tables(section):
@@ -592,6 +592,11 @@ class _Loader:
             rpm = default_rpm(propeller, air, float(advance_ratio[-1]))
             reason = "the rpm limit" if rpm[-1] == propeller.rpm_limit else f"a tip Mach number of {DEFAULT_TIP_MACH:g}"
             self.notices.append(f"no rpm in [grid]: {rpm[0]:g} to {rpm[-1]:g} rpm is taken from {reason}")
+            if propeller.rpm_limit is None:
+                self.notes.append(
+                    f"rpm up to {rpm[-1]:g} is a default (helical tip Mach number {DEFAULT_TIP_MACH:g}), "
+                    "no rpm_limit given"
+                )
         with self.about(("grid",)):
             return Grid(advance_ratio=advance_ratio, rpm=rpm)
         return None

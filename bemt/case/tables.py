@@ -24,7 +24,15 @@ RADIUS_TOLERANCE = 1e-3
 
 @dataclass(frozen=True)
 class Column:
-    """A column a file may have: a pure ratio, or a quantity whose header ends in its unit."""
+    """A column a file may have: a pure ratio, or a quantity whose header ends in its unit.
+
+    Parameters
+    ----------
+    name : str
+        Without the unit.
+    kind : Kind, optional
+        None for a pure ratio.
+    """
 
     name: str
     kind: Kind | None = None
@@ -283,7 +291,13 @@ _STATION_COLUMNS = (
 
 @dataclass(frozen=True, eq=False)
 class StationColumns:
-    """The stations of a blade as written: ratios, or lengths that still need the measured diameter."""
+    """The stations of a blade as written: ratios, or lengths that still need the measured diameter.
+
+    Parameters
+    ----------
+    sheet : Sheet
+        The cells as read.
+    """
 
     sheet: Sheet
 

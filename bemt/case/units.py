@@ -32,7 +32,17 @@ _UNIT = re.compile(rf"{_PRODUCT}(?:{_TIMES}\({_PRODUCT}\))?")
 
 @dataclass(frozen=True)
 class Kind:
-    """A kind of quantity: its name, the SI unit it is stored in, and units a reader would write."""
+    """A kind of quantity.
+
+    Parameters
+    ----------
+    name : str
+        For messages.
+    unit : str
+        The unit it is stored in.
+    fitting : tuple of str
+        Units a reader would write, for messages.
+    """
 
     name: str
     unit: str
@@ -200,7 +210,15 @@ def _to_si(number: float, unit: pint.Unit, kind: Kind) -> float:
 
 @dataclass(frozen=True)
 class Spread:
-    """A standard uncertainty: absolute in SI, or relative where no unit was written."""
+    """A standard uncertainty: absolute in SI, or relative where no unit was written.
+
+    Parameters
+    ----------
+    value : float
+        Not negative.
+    relative : bool
+        Whether it is a share of the value it belongs to.
+    """
 
     value: float
     relative: bool
@@ -283,7 +301,13 @@ class Measured:
 
 @dataclass(frozen=True)
 class MeasuredSpread:
-    """Annotation of a standard uncertainty: text with a unit is absolute, a bare number relative."""
+    """Annotation of a standard uncertainty: text with a unit is absolute, a bare number relative.
+
+    Parameters
+    ----------
+    kind : Kind
+        What is uncertain.
+    """
 
     kind: Kind
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import click
 
-from bemt.cli.output import CAUTION_POWER, CAUTION_PROPELLER, case_argument, say
+from bemt.cli.output import CAUTION_POWER, CAUTION_PROPELLER, CAUTION_RULES, case_argument, say
 
 
 @click.command("check")
@@ -27,3 +27,5 @@ def command(case: str) -> None:
         say("This case names no rpm_limit: look for the limit on the propeller, and give it.")
     if loaded.battery is not None:
         say(CAUTION_POWER)
+    if loaded.airframe is not None:
+        say(CAUTION_RULES)

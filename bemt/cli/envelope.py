@@ -9,6 +9,7 @@ import click
 from bemt.cli.output import (
     CAUTION_POWER,
     CAUTION_PROPELLER,
+    CAUTION_RULES,
     case_argument,
     check_targets,
     deliver,
@@ -49,5 +50,8 @@ def command(case: str, outputs: tuple[str, ...], figure: str | None, strict: boo
     run = bemt.envelope(bemt.load(case))
     say_notes(run)
     say(CAUTION_PROPELLER)
-    say(CAUTION_POWER)
+    if "battery_current" in run:
+        say(CAUTION_POWER)
+    if "drag" in run:
+        say(CAUTION_RULES)
     deliver(run, outputs, figure, text=_text, draw=_figure, strict=strict)

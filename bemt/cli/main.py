@@ -19,7 +19,16 @@ class CommandGroup(click.Group):
     """Imports a command's module when it is asked for, and turns what went wrong into messages and exit codes."""
 
     def list_commands(self, ctx: click.Context) -> list[str]:  # noqa: ARG002
-        """Return the names in the order of a user's work."""
+        """Return the names in the order of a user's work.
+
+        Parameters
+        ----------
+        ctx : click.Context
+
+        Returns
+        -------
+        list of str
+        """
         return list(COMMANDS)
 
     def get_command(self, ctx: click.Context, cmd_name: str) -> click.Command | None:  # noqa: ARG002
@@ -42,7 +51,17 @@ class CommandGroup(click.Group):
         return command
 
     def invoke(self, ctx: click.Context) -> Any:
-        """Run the command; a mistake the user can mend ends in words and an exit code, not in a traceback."""
+        """Run the command; a mistake the user can mend ends in words and an exit code, not in a traceback.
+
+        Parameters
+        ----------
+        ctx : click.Context
+
+        Returns
+        -------
+        object
+            Whatever the command returned.
+        """
         try:
             return super().invoke(ctx)
         except BemtError as error:

@@ -21,9 +21,9 @@ CAUTION_PROPELLER = (
     "Never stand in the plane of a turning propeller. The rpm limit printed on it overrules every number here."
 )
 CAUTION_POWER = (
-    "Lithium cells drawn beyond their current burn: stay inside the limits of battery, controller and motor. "
-    "Where and how you may fly is a matter of your local rules."
+    "Lithium cells drawn beyond their current burn: stay inside the limits of battery, controller and motor."
 )
+CAUTION_RULES = "Where and how you may fly is a matter of your local rules."
 
 
 def case_argument(command: _Command) -> _Command:

@@ -46,7 +46,9 @@ def command(case: str, outputs: tuple[str, ...], figure: str | None, radial: boo
     check_targets(outputs, figure)
     import bemt
 
-    table = bemt.coefficient_table(bemt.load(case), radial=radial)
+    # Only a netCDF file carries the look-up table, which takes longer than the rest together.
+    lookup = any(output.lower().endswith(".nc") for output in outputs)
+    table = bemt.coefficient_table(bemt.load(case), radial=radial, lookup=lookup)
     say_notes(table)
     say(CAUTION_PROPELLER)
     deliver(table, outputs, figure, text=_text, draw=_figure, strict=strict)

@@ -8,7 +8,14 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from bemt.air import Air
-from bemt.drive.loads import RPM_PER_RAD_S, PropellerLoads, PropellerState, propeller_state, speed_for_thrust
+from bemt.drive.loads import (
+    RPM_PER_RAD_S,
+    PropellerLoads,
+    PropellerState,
+    graded,
+    propeller_state,
+    speed_for_thrust,
+)
 from bemt.drive.roots import FloatArray
 from bemt.quantities.checks import require_positive
 
@@ -25,8 +32,10 @@ class ShaftPoints:
         [rpm], [N], [N m], [W].
     propeller_efficiency : numpy.ndarray
         Thrust power over shaft power, NaN where the propeller does not propel.
-    outside_polar_share, stalled_share : numpy.ndarray
+    outside_polar_share, stalled_share, low_reynolds_share : numpy.ndarray
         Shares of the propeller's span.
+    trust, trust_reasons : numpy.ndarray of int
+        Codes and bits of the registry.
     status : numpy.ndarray of int
         Codes of the registry.
     """
@@ -39,6 +48,9 @@ class ShaftPoints:
     propeller_efficiency: FloatArray
     outside_polar_share: FloatArray
     stalled_share: FloatArray
+    low_reynolds_share: FloatArray
+    trust: NDArray[np.int16]
+    trust_reasons: NDArray[np.int16]
     status: NDArray[np.int16]
 
 
@@ -102,7 +114,7 @@ class BarePropeller:
         flat_airspeed = air_axis.ravel()
         disk_airspeed = flat_airspeed * self.inflow_factor
         state = propeller_state(self.propeller, self.air, disk_airspeed, turns.ravel() / RPM_PER_RAD_S)
-        return _shaft_points(flat_airspeed, disk_airspeed, state, air_axis.shape)
+        return self._points(flat_airspeed, state, air_axis.shape)
 
     def at_thrust(self, airspeed: ArrayLike, thrust: ArrayLike) -> ShaftPoints:
         """Return the points at which the propeller gives a thrust.
@@ -125,7 +137,7 @@ class BarePropeller:
         speed = speed_for_thrust(self.propeller, self.air, disk_airspeed, asked.ravel(), self.no_load_speed)
         speed = np.where(speed <= self.no_load_speed, speed, np.nan)
         state = propeller_state(self.propeller, self.air, disk_airspeed, speed)
-        return _shaft_points(flat_airspeed, disk_airspeed, state, air_axis.shape)
+        return self._points(flat_airspeed, state, air_axis.shape)
 
     def at_full(self, airspeed: ArrayLike) -> ShaftPoints:
         """Return the points at the highest rpm.
@@ -142,21 +154,24 @@ class BarePropeller:
         """
         return self.at_rpm(airspeed, self.highest_rpm)
 
-
-def _shaft_points(
-    airspeed: FloatArray, disk_airspeed: FloatArray, state: PropellerState, shape: tuple[int, ...]
-) -> ShaftPoints:
-    shaft_power = state.torque * state.speed
-    propels = (state.thrust >= 0.0) & (shaft_power > 0.0)
-    efficiency = np.where(propels, state.thrust * disk_airspeed, np.nan) / np.where(propels, shaft_power, 1.0)
-    return ShaftPoints(
-        airspeed=airspeed.reshape(shape),
-        rpm=(state.speed * RPM_PER_RAD_S).reshape(shape),
-        thrust=state.thrust.reshape(shape),
-        torque=state.torque.reshape(shape),
-        shaft_power=shaft_power.reshape(shape),
-        propeller_efficiency=efficiency.reshape(shape),
-        outside_polar_share=state.outside_polar_share.reshape(shape),
-        stalled_share=state.stalled_share.reshape(shape),
-        status=state.status.reshape(shape),
-    )
+    def _points(self, airspeed: FloatArray, state: PropellerState, shape: tuple[int, ...]) -> ShaftPoints:
+        """Turn the solution into the quantities of the registry."""
+        disk_airspeed = airspeed * self.inflow_factor
+        shaft_power = state.torque * state.speed
+        propels = (state.thrust >= 0.0) & (shaft_power > 0.0)
+        efficiency = np.where(propels, state.thrust * disk_airspeed, np.nan) / np.where(propels, shaft_power, 1.0)
+        trust, reasons = graded(self.propeller, self.air, disk_airspeed, state)
+        return ShaftPoints(
+            airspeed=airspeed.reshape(shape),
+            rpm=(state.speed * RPM_PER_RAD_S).reshape(shape),
+            thrust=state.thrust.reshape(shape),
+            torque=state.torque.reshape(shape),
+            shaft_power=shaft_power.reshape(shape),
+            propeller_efficiency=efficiency.reshape(shape),
+            outside_polar_share=state.outside_polar_share.reshape(shape),
+            stalled_share=state.stalled_share.reshape(shape),
+            low_reynolds_share=state.low_reynolds_share.reshape(shape),
+            trust=trust.reshape(shape),
+            trust_reasons=reasons.reshape(shape),
+            status=state.status.reshape(shape),
+        )

@@ -15,6 +15,7 @@ from bemt.drive.loads import (
     RPM_PER_RAD_S,
     PropellerLoads,
     PropellerState,
+    graded,
     last_falling_crossing,
     load_curves,
     propeller_state,
@@ -53,8 +54,10 @@ class OperatingPoints:
         Shares of power; NaN where power does not flow from the battery to the air.
     winding_temperature : numpy.ndarray
         Steady [degree Celsius]; NaN where not modelled, infinite where the winding runs away.
-    outside_polar_share, stalled_share : numpy.ndarray
+    outside_polar_share, stalled_share, low_reynolds_share : numpy.ndarray
         Shares of the propeller's span.
+    trust, trust_reasons : numpy.ndarray of int
+        Codes and bits of the registry.
     status : numpy.ndarray of int
         Codes of the registry; "not converged" where no equilibrium lies inside the propeller's table.
     """
@@ -79,6 +82,9 @@ class OperatingPoints:
     winding_temperature: FloatArray
     outside_polar_share: FloatArray
     stalled_share: FloatArray
+    low_reynolds_share: FloatArray
+    trust: NDArray[np.int16]
+    trust_reasons: NDArray[np.int16]
     status: NDArray[np.int16]
 
 
@@ -132,6 +138,12 @@ class Drive:
         """Angular speed no propeller on this drive exceeds unless the wind drives it [rad/s]."""
         voltage = self.battery.open_circuit_voltage * self.controller.full_duty
         return voltage * self.motor.speed_constant / self.motor.gear_ratio
+
+    @property
+    def models_winding(self) -> bool:
+        """Whether the winding temperature is known: it needs a thermal resistance and the air's temperature."""
+        known_air = self.air is not None and self.air.temperature is not None
+        return known_air and self.motor.thermal_resistance is not None
 
     def at_throttle(self, airspeed: ArrayLike, throttle: ArrayLike) -> OperatingPoints:
         """Return the equilibrium at each airspeed and throttle, the glide included.
@@ -262,6 +274,7 @@ class Drive:
         at_disk = thrust * airspeed * self.inflow_factor
         gained = thrust * airspeed * self.thrust_factor
         no_power = np.isfinite(state.speed) & (circuit.battery_current == 0.0)
+        trust, reasons = graded(self.propeller, self.air, airspeed * self.inflow_factor, state)
         values: dict[str, NDArray[np.float64] | NDArray[np.int16]] = {
             "airspeed": airspeed,
             "throttle": stick,
@@ -283,6 +296,9 @@ class Drive:
             "winding_temperature": self._winding_temperature(circuit.motor_current, state.speed),
             "outside_polar_share": state.outside_polar_share,
             "stalled_share": state.stalled_share,
+            "low_reynolds_share": state.low_reynolds_share,
+            "trust": trust,
+            "trust_reasons": reasons,
             "status": state.status,
         }
         return OperatingPoints(**{name: array.reshape(shape) for name, array in values.items()})  # type: ignore[arg-type]
@@ -307,6 +323,7 @@ def _only_where(kept: NDArray[np.bool_], state: PropellerState) -> PropellerStat
         torque=np.where(kept, state.torque, np.nan),
         stalled_share=np.where(kept, state.stalled_share, np.nan),
         outside_polar_share=np.where(kept, state.outside_polar_share, np.nan),
+        low_reynolds_share=np.where(kept, state.low_reynolds_share, np.nan),
         status=state.status,
     )
 

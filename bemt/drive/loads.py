@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from bemt.air import Air
 from bemt.drive.roots import FloatArray, IndexArray, bracketed_root
 from bemt.quantities.registry import STATUS_CONVERGED, STATUS_NOT_CONVERGED
+from bemt.table.validity import grade
 
 RPM_PER_RAD_S = 30.0 / math.pi
 
@@ -47,6 +48,11 @@ class Loads(Protocol):
         ...
 
     @property
+    def low_reynolds_share(self) -> NDArray[np.float64]:
+        """Share of the span below a Reynolds number of 60 000."""
+        ...
+
+    @property
     def status(self) -> NDArray[Any]:
         """Status of the solution behind the loads."""
         ...
@@ -60,8 +66,38 @@ class PropellerLoads(Protocol):
         """Diameter [m]."""
         ...
 
+    @property
+    def air(self) -> Air:
+        """Air of loads that are asked for without one."""
+        ...
+
+    @property
+    def tip_divergence_mach(self) -> float:
+        """Helical tip Mach number from which drag rises steeply; infinite where it is not known."""
+        ...
+
+    @property
+    def section_guessed(self) -> bool:
+        """Whether nobody knows the section of the blade."""
+        ...
+
     def loads(self, airspeed: Any, rpm: Any, air: Air | None = None) -> Loads:
-        """Return the loads at airspeeds [m/s] and rpm, broadcast against each other."""
+        """Return the loads of one propeller.
+
+        Parameters
+        ----------
+        airspeed : array_like
+            Of the air the disk meets [m/s].
+        rpm : array_like
+            Broadcast against `airspeed`.
+        air : Air, optional
+            Of all points; without one the propeller's own.
+
+        Returns
+        -------
+        Loads
+            Broadcast shape.
+        """
         ...
 
 
@@ -75,7 +111,7 @@ class PropellerState:
         Angular speed [rad/s].
     thrust, torque : numpy.ndarray, shape (n,)
         [N], [N m].
-    stalled_share, outside_polar_share : numpy.ndarray, shape (n,)
+    stalled_share, outside_polar_share, low_reynolds_share : numpy.ndarray, shape (n,)
         Shares of the span.
     status : numpy.ndarray of int, shape (n,)
         Codes of the registry.
@@ -86,6 +122,7 @@ class PropellerState:
     torque: FloatArray
     stalled_share: FloatArray
     outside_polar_share: FloatArray
+    low_reynolds_share: FloatArray
     status: NDArray[np.int16]
 
 
@@ -132,20 +169,53 @@ def propeller_state(
     """
     at_rest = (speed == 0.0) & (airspeed == 0.0)
     asked = np.isfinite(speed) & np.isfinite(airspeed) & ~at_rest
-    thrust, torque, stalled, outside = (np.where(at_rest, 0.0, np.nan) for _ in range(4))
+    thrust, torque, stalled, outside, low = (np.where(at_rest, 0.0, np.nan) for _ in range(5))
     status = np.where(at_rest, STATUS_CONVERGED, STATUS_NOT_CONVERGED).astype(np.int16)
     if asked.any():
         loads = propeller.loads(airspeed[asked], speed[asked] * RPM_PER_RAD_S, air=air)
         thrust[asked], torque[asked] = loads.thrust, loads.torque
         stalled[asked], outside[asked] = loads.stalled_share, loads.outside_polar_share
+        low[asked] = loads.low_reynolds_share
         status[asked] = loads.status
         missing = np.isnan(thrust) | np.isnan(torque)
         status[missing] = STATUS_NOT_CONVERGED
     else:
         missing = np.isnan(thrust)
-    for array in (thrust, torque, stalled, outside):
+    for array in (thrust, torque, stalled, outside, low):
         array[missing] = np.nan
-    return PropellerState(np.where(missing, np.nan, speed), thrust, torque, stalled, outside, status)
+    return PropellerState(np.where(missing, np.nan, speed), thrust, torque, stalled, outside, low, status)
+
+
+def graded(
+    propeller: PropellerLoads, air: Air | None, airspeed: FloatArray, state: PropellerState
+) -> tuple[NDArray[np.int16], NDArray[np.int16]]:
+    """Grade how far the loads of points can be trusted.
+
+    Parameters
+    ----------
+    propeller : PropellerLoads
+        Propeller.
+    air : Air or None
+        Air of the points; None: the propeller's own.
+    airspeed : numpy.ndarray, shape (n,)
+        Of the air the disk meets [m/s].
+    state : PropellerState
+        The points.
+
+    Returns
+    -------
+    trust, reasons : numpy.ndarray of int16, shape (n,)
+        As `bemt.table.validity.grade`.
+    """
+    tip_mach = np.hypot(airspeed, 0.5 * propeller.diameter * state.speed) / (air or propeller.air).speed_of_sound
+    return grade(
+        state.status,
+        state.stalled_share,
+        state.outside_polar_share,
+        state.low_reynolds_share,
+        tip_mach - propeller.tip_divergence_mach,
+        section_guessed=propeller.section_guessed,
+    )
 
 
 def load_curves(propeller: PropellerLoads, air: Air | None, airspeed: FloatArray, fastest: float) -> LoadCurves:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import textwrap
 from typing import TYPE_CHECKING, Any
 
@@ -49,7 +50,14 @@ _WIDTH, _PANEL_HEIGHT, _PANEL_GAP = 7.4, 2.55, 0.22
 
 
 def _graded_line(
-    axes: Axes, x: FloatArray, y: FloatArray, grade: NDArray[Any], colour: Any, marker: str, first: int
+    axes: Axes,
+    x: FloatArray,
+    y: FloatArray,
+    grade: NDArray[Any],
+    colour: Any,
+    marker: str,
+    first: int,
+    unmarked: float = math.nan,
 ) -> None:
     """Draw one rpm: colour and shape say which it is, dashes and hollow shapes say how far to trust it."""
     worse = np.minimum(grade[:-1], grade[1:])
@@ -64,6 +72,7 @@ def _graded_line(
             start = stop
     every = max(1, x.size // 9)
     at = np.arange(first % every, x.size, every) if x.size > 9 else np.arange(x.size)
+    at = at[x[at] != unmarked]
     for solid in (True, False):
         chosen = at[(grade[at] > TRUST_POOR) == solid]
         axes.plot(
@@ -77,6 +86,21 @@ def _graded_line(
             zorder=3,
         )
     axes.update_datalim(np.column_stack([x, y])[np.isfinite(y)])
+
+
+def _closed(
+    J: FloatArray, efficiency: FloatArray, grade: NDArray[Any], zero_thrust: float
+) -> tuple[FloatArray, FloatArray, NDArray[Any]]:
+    """Lead an efficiency curve down to where the thrust ends, and with it the efficiency."""
+    after = int(np.searchsorted(J, zero_thrust))
+    inside = 0 < after < J.size and J[after] > zero_thrust  # both false where there is no such advance ratio
+    if not inside or np.isnan(efficiency[after - 1]) or np.isfinite(efficiency[after]):
+        return J, efficiency, grade
+    return (
+        np.insert(J, after, zero_thrust),
+        np.insert(efficiency, after, 0.0),
+        np.insert(grade, after, min(grade[after - 1], grade[after])),
+    )
 
 
 def _reasons(table: xr.Dataset) -> str:
@@ -152,9 +176,11 @@ def coefficient_figure(table: xr.Dataset) -> Figure:
         for axes, (name, symbol) in zip(panels, _PANELS, strict=True):
             values = table[name].values
             for index in range(count):
-                _graded_line(
-                    axes, J, values[index], grade[index], colours[index], MARKERS[index % len(MARKERS)], 2 * index + 1
-                )
+                x, y, trust, end = J, values[index], grade[index], math.nan
+                if name == "efficiency" and "zero_thrust_advance_ratio" in table:
+                    end = float(table["zero_thrust_advance_ratio"].values[index])
+                    x, y, trust = _closed(x, y, trust, end)
+                _graded_line(axes, x, y, trust, colours[index], MARKERS[index % len(MARKERS)], 2 * index + 1, end)
             failed = (
                 table["status"].values == STATUS_NOT_CONVERGED if "status" in table else np.zeros_like(values, bool)
             )

@@ -9,13 +9,15 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
+from matplotlib.legend_handler import HandlerTuple
 from matplotlib.lines import Line2D
 from matplotlib.patches import Rectangle
 from matplotlib.transforms import blended_transform_factory
 from numpy.typing import NDArray
 
 from bemt.figures.style import INK, LIMIT, QUIET, our_style, ramp, spread
-from bemt.quantities.registry import COORDINATES, ENVELOPE, STATUS_NOT_CONVERGED, by_name
+from bemt.files.flags import words
+from bemt.quantities.registry import COORDINATES, ENVELOPE, STATUS_NOT_CONVERGED, WINDING_CEILING, by_name
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -29,6 +31,7 @@ _PANELS: tuple[tuple[str, tuple[tuple[str, str], ...]], ...] = (
     ("motor_current", (("motor_current_margin", "motor"), ("controller_current_margin", "controller"))),
     ("rpm", (("rpm_margin", "propeller"),)),
 )
+_MARGINS = (*(margin for _, limits in _PANELS for margin, _ in limits), "winding_temperature_margin")
 _WITHOUT_MOTOR: tuple[tuple[str, tuple[tuple[str, str], ...]], ...] = (("thrust", ()), ("shaft_power", ()))
 _LINES = 5
 _BEYOND = (0, (1.0, 1.5))
@@ -55,10 +58,10 @@ _COLUMNS = (
     _Column(
         "motor", "A", "point_motor_current", 1.0, 1, ("point_motor_current_margin", "point_controller_current_margin")
     ),
+    _Column("winding", "°C", "point_winding_temperature", 1.0, 0, ("point_winding_temperature_margin",)),
     _Column("battery", "A", "point_battery_current", 1.0, 1, ("point_battery_current_margin",)),
     _Column("battery", "W", "point_battery_power", 1.0, 0),
-    _Column("overall η", "%", "point_overall_efficiency", 100.0, 1),
-    _Column("stalled", "% span", "point_stalled_share", 100.0, 0),
+    _Column("overall", "η %", "point_overall_efficiency", 100.0, 1),
     _Column("endurance", "min", "point_endurance", 1 / 60, 1),
     _Column("range", "km", "point_range", 1e-3, 1),
     _Column("climb", "m/s", "point_climb_rate", 1.0, 2),
@@ -74,12 +77,11 @@ def _limit(run: xr.Dataset, name: str, margin: str) -> float | None:
 
 
 def _beyond(run: xr.Dataset, rows: str) -> NDArray[np.bool_]:
-    """Say which points of the grid break any limit."""
+    """Say which points of the grid break any limit, or would overheat the winding if held."""
     broken = np.zeros((run.sizes["airspeed"], run.sizes[rows]), dtype=bool)
-    for _, limits in _PANELS:
-        for margin, _ in limits:
-            if margin in run:
-                broken |= run[margin].transpose("airspeed", rows).values < 0
+    for margin in _MARGINS:
+        if margin in run:
+            broken |= run[margin].transpose("airspeed", rows).values < 0
     return broken
 
 
@@ -225,9 +227,12 @@ def _panel(
 
 def _points_table(figure: Figure, run: xr.Dataset, left: float, right: float, top: float, step: float) -> None:
     """Set the named points as a small table; a value beyond its limit is bold, red and marked."""
-    columns = [column for column in _COLUMNS if column.name in run and np.isfinite(run[column.name].values).any()]
-    edges = np.linspace(left + 0.135, right, len(columns) + 1)[1:]
-    for edge, column in zip(edges, columns, strict=True):
+    columns = [column for column in _COLUMNS if column.name in run and not np.isnan(run[column.name].values).all()]
+    grades = words(run["point_trust"]) if "point_trust" in run else None
+    edges = np.linspace(left + 0.10, right, len(columns) + (1 if grades is None else 2))[1:]
+    if grades is not None:
+        figure.text(edges[-1], top, "trust", fontsize=8, color=QUIET, ha="right", va="center")
+    for edge, column in zip(edges, columns, strict=False):
         figure.text(edge, top, column.head, fontsize=8, color=QUIET, ha="right", va="center")
         figure.text(edge, top - 0.72 * step, column.unit, fontsize=8, color=QUIET, ha="right", va="center")
     rule = top - 1.3 * step
@@ -240,10 +245,15 @@ def _points_table(figure: Figure, run: xr.Dataset, left: float, right: float, to
             )
         figure.text(left + 0.004, y, str(point).replace("_", " "), fontsize=8.5, va="center", fontweight="bold")
         row = run.isel(point=k)
-        for edge, column in zip(edges, columns, strict=True):
+        if np.isnan(float(row["point_rpm"])):
+            figure.text(edges[0], y, "none", fontsize=8.5, ha="right", va="center")
+            continue
+        if grades is not None:
+            figure.text(edges[-1], y, grades[k], fontsize=8.5, ha="right", va="center")
+        for edge, column in zip(edges, columns, strict=False):
             value = float(row[column.name]) * column.scale
             over = any(margin in row and float(row[margin]) < 0 for margin in column.margins)
-            text = f"{value:.{column.digits}f}" if np.isfinite(value) else "–"
+            text = "no end" if value == np.inf else f"{value:.{column.digits}f}" if np.isfinite(value) else "–"
             figure.text(
                 edge, y, f"{text} !" if over else text, fontsize=8.5, ha="right", va="center",
                 color=LIMIT if over else INK, fontweight="bold" if over else "normal",
@@ -262,14 +272,16 @@ def envelope_figure(run: xr.Dataset) -> Figure:
     -------
     matplotlib.figure.Figure
         A panel each for thrust with the drag line, battery current, motor current and rpm, with their limits, and
-        the named points as a table. Lines are dotted where any limit is broken.
+        the named points as a table. Lines are dotted where any limit is broken, or the winding would get too hot.
     """
     rows = "throttle" if "throttle" in run.dims else "rpm"
     panels = [panel for panel in (_PANELS if rows == "throttle" else _WITHOUT_MOTOR) if panel[0] in run.data_vars]
     settings = run[rows].values
     picks = sorted({int(np.argmin(np.abs(settings - settings[-1] * (k + 1) / _LINES))) for k in range(_LINES)})
     title = textwrap.wrap(str(run.attrs.get("title", "")) or "Envelope", 92)
-    points = "point" in run.dims
+    # The one point of a propeller without motor and airframe would only repeat the end of a line.
+    points = "point" in run.dims and (rows == "throttle" or "drag" in run)
+    hot = "winding_temperature" in run and not np.isnan(run["winding_temperature"].values).all()
     lines = -(-len(panels) // 2)
 
     width, panel_height, gap, step = 11.0, 2.7, 0.34, 0.21
@@ -295,22 +307,28 @@ def envelope_figure(run: xr.Dataset) -> Figure:
         for text in title:
             figure.text(left, 1 - y / height, text, fontsize=13.5, fontweight="bold", va="center")
             y += 0.27
-        marks: list[Line2D] = [
-            Line2D([], [], color=ramp(2)[1], linewidth=1.8, label="throttle" if rows == "throttle" else "rpm")
-        ]
+        # The lines' own colours in a row: a single one would read as the line that has it.
+        setting = tuple(Line2D([], [], color=colour, linewidth=1.8) for colour in ramp(len(picks)))
+        marks: list[Any] = [setting]
+        names = [f"{rows}, low to high" if len(picks) > 1 else rows]
         if "drag" in run and np.isfinite(run["drag"].values).any():
-            marks.append(Line2D([], [], color=INK, linewidth=2.0, linestyle=_LEVEL, label="level flight (drag)"))
+            marks.append(Line2D([], [], color=INK, linewidth=2.0, linestyle=_LEVEL))
+            names.append("level flight (drag)")
         for point, (shape, size) in _POINT_MARKS.items():
-            if points and point in run["point"].values:
+            there = points and point in run["point"].values
+            if there and np.isfinite(float(run["point_rpm"].sel(point=point))):
                 marks.append(
                     Line2D([], [], marker=shape, markersize=0.8 * size, linestyle="", markerfacecolor="#f2b705",
-                           markeredgecolor=INK, label=point.replace("_", " "))
+                           markeredgecolor=INK)
                 )  # fmt: skip
+                names.append(point.replace("_", " "))
         if _beyond(run, rows)[:, picks].any():
-            marks.append(Line2D([], [], color=ramp(2)[1], linewidth=1.8, linestyle=_BEYOND, label="beyond a limit"))
+            marks.append(Line2D([], [], color=QUIET, linewidth=1.8, linestyle=_BEYOND))
+            names.append("beyond a limit" + (f", or winding above {WINDING_CEILING:g} °C if held" if hot else ""))
         figure.legend(
-            handles=marks, loc="upper left", bbox_to_anchor=(left - 0.006, 1 - (y - 0.10) / height), ncols=len(marks),
+            marks, names, loc="upper left", bbox_to_anchor=(left - 0.006, 1 - (y - 0.10) / height), ncols=len(marks),
             fontsize=9, handlelength=2.6, columnspacing=1.8, borderaxespad=0.0, borderpad=0.0,
+            handler_map={tuple: HandlerTuple(ndivide=None, pad=0.0)},
         )  # fmt: skip
         if points:
             _points_table(figure, run, left, right, (foot - 0.66) / height, step / height)
@@ -321,7 +339,8 @@ def envelope_figure(run: xr.Dataset) -> Figure:
                 if rows == "throttle"
                 else "No motor in the case: thrust and shaft power of one propeller."
             )
-            + (" A value marked ! is beyond its limit." if points and rows == "throttle" else ""),
+            + (" ! beyond its limit." if points and rows == "throttle" else "")
+            + (f" Winding: if held there, ! above {WINDING_CEILING:g} °C." if points and hot else ""),
             fontsize=8, color=QUIET, va="center",
         )  # fmt: skip
     return figure

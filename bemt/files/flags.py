@@ -23,7 +23,7 @@ def spoken(word: str) -> str:
     Returns
     -------
     str
-        The same with spaces, names of people capitalised.
+        The same with spaces for underscores; "low_reynolds" becomes "low Reynolds number".
     """
     return _SPOKEN.get(word, word.replace("_", " "))
 

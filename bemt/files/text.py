@@ -3,64 +3,85 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from bemt.files.flags import spoken, words
-from bemt.quantities.registry import STATUS_NOT_CONVERGED
+from bemt.quantities.registry import STATUS_NOT_CONVERGED, WINDING_CEILING
 
 if TYPE_CHECKING:
     import xarray as xr
 
 _ROWS_SHOWN = 16
 _MISSING = "-"
+_NO_POINT = "none"
+_SHORTENED = "Not all airspeeds shown; -o FILE.csv or FILE.nc keeps all."
 
-# Head and unit, variable, factor, digits, and the margins that mark a value beyond a limit.
-_Column = tuple[str, str, float, int, tuple[str, ...]]
+
+@dataclass(frozen=True)
+class _Column:
+    """A column: its head and unit, the variable without its prefix, factor, digits, and margins that mark its value."""
+
+    head: str
+    unit: str
+    name: str
+    scale: float = 1.0
+    digits: int = 0
+    margins: tuple[str, ...] = ()
+
+
+_DRIVE_COLUMNS = (
+    _Column("rpm", "", "rpm", margins=("rpm_margin",)),
+    _Column("thrust", "N", "thrust", digits=2),
+    _Column("torque", "N m", "torque", digits=3),
+    _Column("shaft", "W", "shaft_power"),
+    _Column("motor", "A", "motor_current", digits=1, margins=("motor_current_margin", "controller_current_margin")),
+    _Column("winding", "degC", "winding_temperature", margins=("winding_temperature_margin",)),
+    _Column("battery", "A", "battery_current", digits=1, margins=("battery_current_margin",)),
+    _Column("battery", "W", "battery_power"),
+    _Column("eta", "%", "propeller_efficiency", 100.0, 1),
+)
+
+
+def _drive_columns(prefix: str, *left_out: str) -> tuple[_Column, ...]:
+    """Return the columns of a drive with the names of level flight, of the named points or of the grid."""
+    return tuple(
+        replace(column, name=prefix + column.name, margins=tuple(prefix + margin for margin in column.margins))
+        for column in _DRIVE_COLUMNS
+        if column.name not in left_out
+    )
+
+
+_FLIGHT_COLUMNS = (
+    _Column("endurance", "min", "endurance", 1 / 60, 1),
+    _Column("range", "km", "range", 1e-3, 1),
+    _Column("climb", "m/s", "climb_rate", digits=2),
+)
 
 _POINT_COLUMNS: tuple[_Column, ...] = (
-    ("V\nm/s", "point_airspeed", 1.0, 1, ()),
-    ("throttle\n%", "point_throttle", 100.0, 0, ()),
-    ("speed\nrpm", "point_rpm", 1.0, 0, ("point_rpm_margin",)),
-    ("thrust\nN", "point_thrust", 1.0, 2, ()),
-    ("shaft\nW", "point_shaft_power", 1.0, 0, ()),
-    (
-        "motor\nA",
-        "point_motor_current",
-        1.0,
-        1,
-        ("point_motor_current_margin", "point_controller_current_margin"),
-    ),
-    ("battery\nA", "point_battery_current", 1.0, 1, ("point_battery_current_margin",)),
-    ("battery\nW", "point_battery_power", 1.0, 0, ()),
-    ("stalled\n%", "point_stalled_share", 100.0, 0, ()),
-    ("endurance\nmin", "point_endurance", 1 / 60, 1, ()),
-    ("range\nkm", "point_range", 1e-3, 1, ()),
-    ("climb\nm/s", "point_climb_rate", 1.0, 2, ()),
+    _Column("V", "m/s", "point_airspeed", digits=1),
+    _Column("throttle", "%", "point_throttle", 100.0),
+    *_drive_columns("point_", "torque", "propeller_efficiency"),
+    *(replace(column, name=f"point_{column.name}") for column in _FLIGHT_COLUMNS),
 )
 _LEVEL_COLUMNS: tuple[_Column, ...] = (
-    ("V\nm/s", "airspeed", 1.0, 1, ()),
-    ("drag\nN", "drag", 1.0, 2, ()),
-    ("throttle\n%", "level_throttle", 100.0, 0, ()),
-    ("speed\nrpm", "level_rpm", 1.0, 0, ("level_rpm_margin",)),
-    ("shaft\nW", "level_shaft_power", 1.0, 0, ()),
-    (
-        "motor\nA",
-        "level_motor_current",
-        1.0,
-        1,
-        ("level_motor_current_margin", "level_controller_current_margin"),
-    ),
-    ("battery\nA", "level_battery_current", 1.0, 1, ("level_battery_current_margin",)),
-    ("battery\nW", "level_battery_power", 1.0, 0, ()),
-    ("endurance\nmin", "endurance", 1 / 60, 1, ()),
-    ("range\nkm", "range", 1e-3, 1, ()),
-    ("climb\nm/s", "climb_rate", 1.0, 2, ()),
+    _Column("V", "m/s", "airspeed", digits=1),
+    _Column("drag", "N", "drag", digits=2),
+    _Column("throttle", "%", "level_throttle", 100.0),
+    *_drive_columns("level_", "thrust", "torque", "propeller_efficiency"),
+    *_FLIGHT_COLUMNS,
+)
+_FULL_COLUMNS: tuple[_Column, ...] = (
+    _Column("V", "m/s", "airspeed", digits=1),
+    *(replace(column, digits=1) if column.name == "shaft_power" else column for column in _drive_columns("")),
 )
 
 
 def _number(value: float, digits: int) -> str:
+    if value == np.inf:  # of all that is printed only a winding's temperature rises without end
+        return "no end"
     return f"{value:.{digits}f}" if np.isfinite(value) else _MISSING
 
 
@@ -73,6 +94,14 @@ def _aligned(heads: Sequence[Sequence[str]], rows: Sequence[Sequence[str]], left
             for k, (cell, width) in enumerate(zip(row, widths, strict=True))
         ]
         yield "  ".join(cells).rstrip()
+
+
+_OF_AN_RPM = (
+    "static_figure_of_merit",
+    "zero_thrust_advance_ratio",
+    "peak_efficiency",
+    "peak_efficiency_advance_ratio",
+)
 
 
 def _every(count: int) -> list[int]:
@@ -93,8 +122,9 @@ def coefficient_text(table: xr.Dataset) -> str:
     Returns
     -------
     str
-        For each rpm its static figure of merit, zero-thrust advance ratio and peak, then rows over the advance ratio
-        with CT, CP, efficiency and the grade of trust with its reasons. Long grids are thinned, and say so.
+        For each rpm a line with static values, zero-thrust advance ratio and peak; then for each rpm rows over the
+        advance ratio with CT, CP, efficiency and the grade of trust with its reasons. Long grids are thinned, and say
+        so.
     """
     table = table.transpose("rpm", "advance_ratio", ...)
     J, picked = table["advance_ratio"].values, _every(table.sizes["advance_ratio"])
@@ -104,14 +134,10 @@ def coefficient_text(table: xr.Dataset) -> str:
     title = str(table.attrs.get("title", ""))
     if title:
         lines += [title, ""]
+    lines += [*_summary(table), ""]
     for k, rpm in enumerate(table["rpm"].values):
         row = table.isel(rpm=k)
-        lines.append(
-            f"{rpm:.0f} rpm:  static figure of merit {_number(float(row['static_figure_of_merit']), 3)},"
-            f"  no thrust at J = {_number(float(row['zero_thrust_advance_ratio']), 3)},"
-            f"  peak efficiency {_number(float(row['peak_efficiency']), 3)}"
-            f" at J = {_number(float(row['peak_efficiency_advance_ratio']), 3)}"
-        )
+        lines.append(f"{rpm:.0f} rpm:")
         cells = [
             (
                 f"{J[i]:.3f}",
@@ -128,8 +154,27 @@ def coefficient_text(table: xr.Dataset) -> str:
         lines.append("")
     if len(picked) < J.size:
         lines.append(f"{len(picked)} of {J.size} advance ratios shown; -o FILE.csv or FILE.nc keeps all.")
-    lines.append("J = V/(nD), CT = T/(rho n^2 D^4), CP = P/(rho n^3 D^5), eta = J CT/CP, n in rev/s.")
+    lines += [
+        "J = V/(nD), CT = T/(rho n^2 D^4), CP = P/(rho n^3 D^5), eta = J CT/CP, n in rev/s.",
+        "FM = sqrt(2/pi) CT^1.5/CP standing still; J0 = J of no thrust.",
+    ]
     return "\n".join(lines)
+
+
+def _summary(table: xr.Dataset) -> Iterator[str]:
+    """Yield a line for each rpm: what it does standing still, where its thrust ends, and its best efficiency."""
+    still = table.isel(advance_ratio=np.flatnonzero(table["advance_ratio"].values == 0.0)[:1])
+    rows = []
+    for k, rpm in enumerate(table["rpm"].values):
+        row = table.isel(rpm=k)
+        static = [still[name].values[k] for name in ("thrust_coefficient", "power_coefficient")]
+        rows.append(
+            [f"{rpm:.0f}"]
+            + [_number(float(value[0]), 4) if value.size else _MISSING for value in static]
+            + [_number(float(row[name]), 3) for name in _OF_AN_RPM]
+        )
+    heads = [["", "static", "static", "static", "", "peak", "at"], ["rpm", "CT", "CP", "FM", "J0", "eta", "J"]]
+    return _aligned(heads, rows)
 
 
 def _with_reasons(grade: str, reasons: str) -> str:
@@ -138,30 +183,81 @@ def _with_reasons(grade: str, reasons: str) -> str:
 
 
 def _operating_rows(
-    run: xr.Dataset, columns: Sequence[_Column], dimension: str, picked: Sequence[int]
+    run: xr.Dataset, columns: Sequence[_Column], dimension: str, picked: Sequence[int], trust: str
 ) -> tuple[list[list[str]], list[list[str]], bool]:
     """Return heads, rows and whether any value is beyond its limit, with columns nobody filled left out."""
-    used = [column for column in columns if column[1] in run and np.isfinite(run[column[1]].values).any()]
+    used = [
+        column
+        for column in columns
+        if column.name in run and dimension in run[column.name].dims and not np.isnan(run[column.name].values).all()
+    ]
+    grades = words(run[trust]) if trust in run else None
     rows: list[list[str]] = []
     marked = False
     for k in picked:
         here = run.isel({dimension: k})
         cells = []
-        for _, name, scale, digits, margins in used:
-            text = _number(float(here[name]) * scale, digits)
-            over = any(margin in here and float(here[margin]) < 0 for margin in margins)
+        for column in used:
+            text = _number(float(here[column.name]) * column.scale, column.digits)
+            over = any(margin in here and float(here[margin]) < 0 for margin in column.margins)
             marked |= over
-            cells.append(text + ("!" if over else " " if margins else ""))
-        rows.append(cells)
-    names = (column[0] + " " if column[4] else column[0] for column in used)
-    heads = [list(line) for line in zip(*(_two_lines(name) for name in names), strict=True)]
-    return heads, rows, marked
+            cells.append(text + ("!" if over else " " if column.margins else ""))
+        rows.append(cells if grades is None else [*cells, grades[k]])
+    # The place of a mark behind values counts for their heads too.
+    places = [" " if column.margins else "" for column in used]
+    heads = [
+        [column.head + place for column, place in zip(used, places, strict=True)],
+        [column.unit + place for column, place in zip(used, places, strict=True)],
+    ]
+    return (
+        [head + ([] if grades is None else [last]) for head, last in zip(heads, ("trust", ""), strict=True)],
+        rows,
+        marked,
+    )
 
 
-def _two_lines(head: str) -> tuple[str, str]:
-    """Split a head into name and unit; the place of a mark behind values counts for both."""
-    name, unit = head.split("\n")
-    return (name + " ", unit) if unit.endswith(" ") else (name, unit)
+def _points_block(run: xr.Dataset) -> tuple[list[str], bool]:
+    """Return the lines of the named points, and whether any value is beyond its limit."""
+    exists = np.isfinite(run["point_rpm"].values)
+    heads, rows, marked = _operating_rows(run, _POINT_COLUMNS, "point", range(exists.size), "point_trust")
+    names = [spoken(str(name)) for name in run["point"].values]
+    shown = [
+        [name, *(row if there else [_NO_POINT, *[""] * (len(row) - 1)])]
+        for name, row, there in zip(names, rows, exists, strict=True)
+    ]
+    lines = list(_aligned([["", *head] for head in heads], shown, left=1))
+    reasons = words(run["point_trust_reasons"]) if "point_trust_reasons" in run else None
+    held = [
+        f"{name} ({', '.join(spoken(word) for word in why.split())})"
+        for name, why in zip(names, reasons or [], strict=False)
+        if why
+    ]
+    if held:
+        lines.append(f"Trust less than good: {'; '.join(held)}.")
+    return [*lines, ""], marked
+
+
+def _grid_blocks(run: xr.Dataset) -> tuple[list[str], bool]:
+    """Return rows over airspeed at full throttle, or without a motor at every rpm, for what has no level flight."""
+    bare = "throttle" not in run.dims
+    axis = run["rpm" if bare else "throttle"].values
+    lines: list[str] = []
+    marked, whole = False, True
+    for k in range(axis.size) if bare else [axis.size - 1]:
+        here = run.isel({"rpm" if bare else "throttle": k})
+        # One row beyond the last thrust: farther out it only brakes.
+        pulls = np.flatnonzero(here["thrust"].values >= 0.0)
+        count = min(int(pulls[-1]) + 2, here.sizes["airspeed"]) if pulls.size else here.sizes["airspeed"]
+        picked = _every(count)
+        heads, rows, over = _operating_rows(here, _FULL_COLUMNS, "airspeed", picked, "trust")
+        marked |= over
+        lines += [f"{axis[k]:.0f} rpm:" if bare else f"Throttle {100 * axis[k]:.0f} %:", *_aligned(heads, rows), ""]
+        whole &= len(picked) == here.sizes["airspeed"]
+    return lines if whole else [*lines, _SHORTENED], marked
+
+
+def _thinned(shown: int, of: int) -> list[str]:
+    return [f"{shown} of {of} airspeeds shown; -o FILE.csv or FILE.nc keeps all."] if shown < of else []
 
 
 def envelope_text(run: xr.Dataset) -> str:
@@ -175,37 +271,44 @@ def envelope_text(run: xr.Dataset) -> str:
     Returns
     -------
     str
-        The named points, then level flight over airspeed; a value beyond its limit carries a mark.
+        The named points, then level flight over airspeed; without an airframe full throttle over airspeed, or, without
+        a motor as well, every rpm of the grid over airspeed. A value beyond its limit carries a mark.
     """
     lines: list[str] = []
     title = str(run.attrs.get("title", ""))
     if title:
         lines += [title, ""]
+    powered, flies = "battery_current" in run, "drag" in run
     marked = False
-    if "point" in run.dims:
-        heads, rows, over = _operating_rows(run, _POINT_COLUMNS, "point", range(run.sizes["point"]))
-        names = [spoken(str(name)) for name in run["point"].values]
-        lines += _aligned(
-            [["", *head] for head in heads], [[name, *row] for name, row in zip(names, rows, strict=True)], left=1
-        )
-        lines.append("")
+    # The one point of a propeller without motor and airframe would be a row of the grid a second time.
+    if "point" in run.dims and (powered or flies):
+        block, marked = _points_block(run)
+        lines += block
+    if not flies:
+        block, over = _grid_blocks(run)
+        lines += block
         marked |= over
-    if "level_rpm" in run and np.isfinite(run["level_rpm"].values).any():
+    elif "level_rpm" in run and np.isfinite(run["level_rpm"].values).any():
         flown = np.flatnonzero(np.isfinite(run["level_rpm"].values))
         picked = [int(flown[k]) for k in _every(flown.size)]
-        heads, rows, over = _operating_rows(run, _LEVEL_COLUMNS, "airspeed", picked)
-        lines += ["Level flight:", *_aligned(heads, rows), ""]
+        heads, rows, over = _operating_rows(run, _LEVEL_COLUMNS, "airspeed", picked, "level_trust")
+        lines += ["Level flight:", *_aligned(heads, rows), "", *_thinned(len(picked), flown.size)]
         marked |= over
-        if len(picked) < flown.size:
-            lines.append(f"{len(picked)} of {flown.size} airspeeds shown; -o FILE.csv or FILE.nc keeps all.")
-    elif "drag" in run:
-        lines += ["Level flight: at no airspeed of the grid.", ""]
+    else:
+        lines += ["Level flight: none at any airspeed of the grid.", ""]
+    modelled = "winding_temperature" in run and not np.isnan(run["winding_temperature"].values).all()
     if marked:
-        lines.append("! beyond a limit of the propeller, motor, controller or battery.")
+        too_hot = ", or a winding too hot" if modelled else ""
+        lines.append(f"! beyond a limit of the propeller, motor, controller or battery{too_hot}.")
+    if modelled:
+        lines.append(
+            "Winding: the temperature it would settle at, held there; marked above "
+            f"{WINDING_CEILING:g} degC (common practice, no source)."
+        )
     lines.append(
         "Thrust is of all propellers, shaft power and motor current of one motor, battery values of the pack."
-        if "battery_current" in run
-        else "No motor in the case: thrust and shaft power of one propeller."
+        if powered
+        else "No motor in the case: thrust, torque and shaft power of one propeller."
     )
     return "\n".join(lines)
 

@@ -29,7 +29,14 @@ from bemt.flight.level import (
 from bemt.flight.limits import Limits, describe_limits
 from bemt.quantities.checks import ascending_axis, require_positive
 from bemt.quantities.dataset import build_dataset
-from bemt.quantities.registry import ENVELOPE, ENVELOPE_WITHOUT_MOTOR, STATUS_NOT_CONVERGED, STATUS_NOT_RUN
+from bemt.quantities.registry import (
+    ENVELOPE,
+    ENVELOPE_WITHOUT_MOTOR,
+    STATUS_NOT_CONVERGED,
+    STATUS_NOT_RUN,
+    TRUST_NOT_RUN,
+    WINDING_CEILING,
+)
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -143,7 +150,8 @@ def build_envelope(
     Returns
     -------
     EnvelopeResult
-        NaN where there is no equilibrium, no level flight or no meaning.
+        NaN where there is no equilibrium, no level flight or no meaning; a winding temperature is infinite where it
+        would rise without end.
 
     Raises
     ------
@@ -184,8 +192,9 @@ def build_envelope(
     notes += point_notes
     if throttle_axis is not None:
         notes += describe_limits(limits, airspeed_axis, throttle_axis, values)
-    notes += _replace_runaway(values)
     points = POINTS if flight is not None else POINTS[:1]
+    if isinstance(source, Drive):
+        notes += _winding_notes(source, values, points)
     return EnvelopeResult(airspeed_axis, throttle_axis, rpm_axis, values, points, tuple(notes))
 
 
@@ -297,9 +306,10 @@ def _level_values(flight: LevelFlight, airspeed: FloatArray, limits: Limits, bat
 
 
 def _flying(points: Points, limits: Limits, prefix: str) -> Values:
-    """Return points that need not exist: where there is none the status says "not run" instead of "not converged"."""
+    """Return points that need not exist: where there is none, status and trust say "not run"."""
     values = _named(points, _RESULT_NAMES, prefix)
-    values[prefix + "status"] = np.where(np.isnan(points.rpm), STATUS_NOT_RUN, points.status).astype(np.int16)
+    for name, blank in (("status", STATUS_NOT_RUN), ("trust", TRUST_NOT_RUN), ("trust_reasons", 0)):
+        values[prefix + name] = np.where(np.isnan(points.rpm), blank, getattr(points, name)).astype(np.int16)
     return values | {prefix + name: margin for name, margin in limits.margins(points).items()}
 
 
@@ -363,7 +373,8 @@ def _merge(size: int, *parts: tuple[list[int], Points]) -> Points:
     kind = type(parts[0][1])
     merged: Values = {}
     for field in fields(kind):
-        column = np.full(size, STATUS_NOT_RUN, dtype=np.int16) if field.name == "status" else np.full(size, np.nan)
+        coded = getattr(parts[0][1], field.name).dtype.kind == "i"
+        column = np.zeros(size, dtype=np.int16) if coded else np.full(size, np.nan)
         for places, points in parts:
             column[places] = getattr(points, field.name)
         merged[field.name] = column
@@ -394,16 +405,16 @@ def _grid_notes(grid: Points) -> list[str]:
     missing = int(np.count_nonzero(grid.status == STATUS_NOT_CONVERGED))
     if missing:
         notes.append(
-            f"{missing} of {grid.rpm.size} points have no equilibrium inside the propeller's table and are missing"
+            f"{missing} of {grid.rpm.size} points: no equilibrium inside the propeller's table, values missing"
         )
     still = int(np.count_nonzero(grid.rpm == 0.0))
     if still:
-        notes.append(f"the propeller stands still at {still} of {grid.rpm.size} points (rpm 0)")
+        notes.append(f"the propeller stands still (rpm 0) at {still} of {grid.rpm.size} points")
     if isinstance(grid, OperatingPoints):
         beyond = int(np.count_nonzero((grid.motor_current == 0.0) & (grid.motor_voltage > grid.battery_voltage)))
         if beyond:
             notes.append(
-                f"at {beyond} points the wind drives the motor above the battery's voltage: "
+                f"at {beyond} of {grid.rpm.size} points the wind drives the motor above the battery's voltage: "
                 "the current its controller's diodes would then pass is left out"
             )
     return notes
@@ -424,17 +435,22 @@ def _flight_notes(flight: LevelFlight, top_speed: float, end: float) -> list[str
     return notes
 
 
-def _replace_runaway(values: Values) -> list[str]:
-    """Make winding temperatures that run away missing, and say so."""
-    notes = []
-    for prefix, where in (
-        ("", "points of the grid"),
-        ("level_", "airspeeds of level flight"),
-        ("point_", "named points"),
-    ):
-        name = prefix + "winding_temperature"
-        if name in values and np.isinf(values[name]).any():
-            count = int(np.count_nonzero(np.isinf(values[name])))
-            values[name] = np.where(np.isinf(values[name]), np.nan, values[name])
-            notes.append(f"held there, the winding would overheat without end at {count} {where}")
-    return notes
+def _winding_notes(drive: Drive, values: Values, points: tuple[str, ...]) -> list[str]:
+    """Say at which named points the winding gets too hot, and where its temperature is not known."""
+    if not drive.models_winding:
+        if drive.motor.thermal_resistance is None:
+            return []
+        return ["no winding temperature: it needs the temperature of the air, and the case gives a density instead"]
+    temperature = values["point_winding_temperature"]
+    named = [(name.replace("_", " "), float(value)) for name, value in zip(points, temperature, strict=True)]
+    settles = [f"{value:.0f} degC ({name})" for name, value in named if WINDING_CEILING < value < math.inf]
+    endless = [name for name, value in named if value == math.inf]
+    words = []
+    if settles:
+        words.append(f"settles at {', '.join(settles)}")
+    if endless:
+        words.append(f"overheats without end ({', '.join(endless)})")
+    if not words:
+        return []
+    stands = "enamel and magnets commonly stand 120 to 150 degC (common practice, no source)"
+    return [f"held there, the winding {' and '.join(words)}; {stands}"]

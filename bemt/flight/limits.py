@@ -1,4 +1,7 @@
-"""The limits printed on propeller, motor, controller and battery: margins to them, and in words where they bind."""
+"""The limits printed on propeller, motor, controller and battery, and what a winding commonly stands.
+
+Margins to them, and in words where they bind.
+"""
 
 from __future__ import annotations
 
@@ -9,15 +12,18 @@ import numpy as np
 from numpy.typing import NDArray
 
 from bemt.drive import Drive, OperatingPoints, ShaftPoints
+from bemt.quantities.registry import WINDING_CEILING
 
 FloatArray = NDArray[np.float64]
 
 _WORDS = {
-    "rpm": ("propeller rpm", "rpm"),
-    "motor_current": ("motor current", "A"),
-    "controller_current": ("controller current", "A"),
-    "battery_current": ("battery current", "A"),
+    "rpm": ("propeller rpm, limit {:g} rpm", "rpm"),
+    "motor_current": ("motor current, limit {:g} A", "A"),
+    "controller_current": ("controller current, limit {:g} A", "A"),
+    "battery_current": ("battery current, limit {:g} A", "A"),
+    "winding_temperature": ("winding temperature if held there, ceiling {:g} degC", "K"),
 }
+_BEYOND_ANY = -1e9  # takes the place of an infinite excess where a straight line is drawn between samples
 
 
 @dataclass(frozen=True)
@@ -32,12 +38,15 @@ class Limits:
         Of one motor [A].
     battery_current : float, optional
         Of the pack [A].
+    winding_temperature : float, optional
+        Of the winding [degree Celsius].
     """
 
     rpm: float | None = None
     motor_current: float | None = None
     controller_current: float | None = None
     battery_current: float | None = None
+    winding_temperature: float | None = None
 
     @classmethod
     def of(cls, drive: Drive, rpm_limit: float | None) -> Limits:
@@ -53,12 +62,14 @@ class Limits:
         Returns
         -------
         Limits
+            With the common ceiling of the winding where its temperature is modelled.
         """
         return cls(
             rpm=rpm_limit,
             motor_current=drive.motor.current_limit,
             controller_current=drive.controller.current_limit,
             battery_current=drive.battery.current_limit,
+            winding_temperature=WINDING_CEILING if drive.models_winding else None,
         )
 
     def margins(self, points: OperatingPoints | ShaftPoints) -> dict[str, FloatArray]:
@@ -80,6 +91,7 @@ class Limits:
                 "motor_current_margin": (self.motor_current, points.motor_current),
                 "controller_current_margin": (self.controller_current, points.motor_current),
                 "battery_current_margin": (self.battery_current, points.battery_current),
+                "winding_temperature_margin": (self.winding_temperature, points.winding_temperature),
             }
         return {name: (np.nan if limit is None else limit) - value for name, (limit, value) in values.items()}
 
@@ -105,12 +117,16 @@ def describe_limits(
     tuple of str
         One sentence for each known limit.
     """
+
+    def margin_of(name: str) -> FloatArray:
+        return np.maximum(np.asarray(values[name], dtype=np.float64), _BEYOND_ANY)
+
     found: list[tuple[float, str]] = []
     for name, (words, unit) in _WORDS.items():
         limit = getattr(limits, name)
         if limit is None:
             continue
-        margin = np.asarray(values[f"{name}_margin"], dtype=np.float64)
+        margin = margin_of(f"{name}_margin")
         over_throttle = _negative_spans(throttle, margin[0])
         places = []
         if over_throttle:
@@ -120,11 +136,11 @@ def describe_limits(
         if over_airspeed:
             where = "at full throttle" if throttle[-1] == 1.0 else f"at throttle {throttle[-1]:.2f}"
             places.append(f"{where} {_airspeeds(over_airspeed, airspeed)}")
-        level = values.get(f"level_{name}_margin")
-        over_level = [] if level is None else _negative_spans(airspeed, np.asarray(level, dtype=np.float64))
+        level = f"level_{name}_margin"
+        over_level = _negative_spans(airspeed, margin_of(level)) if level in values else []
         if over_level:
             places.append(f"in level flight {_airspeeds(over_level, airspeed)}")
-        head = f"{words}, limit {limit:g} {unit}: "
+        head = f"{words.format(limit)}: "
         if places:
             first = over_throttle[0][0] if over_throttle else float(throttle[-1])
             found.append((first, head + "exceeded " + "; ".join(places)))

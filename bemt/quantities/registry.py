@@ -81,6 +81,10 @@ TRUST_REASONS = {
     128: "section_guessed",
 }
 
+WINDING_CEILING = 120.0
+"""Winding temperature [degree Celsius] above which results are marked: enamel and magnets commonly stand 120 to 150
+(common practice, no source)."""
+
 _POINT = ("rpm", "advance_ratio")
 _RPM = ("rpm",)
 _RADIAL = ("rpm", "advance_ratio", "r_over_R")
@@ -280,7 +284,12 @@ _OPERATING = (
         "power of the thrust that reaches the airframe over the power the cells give, resistance included",
     ),
     Quantity(
-        "winding_temperature", "Tw", _GRID, "degree_Celsius", "winding temperature", "steady; missing if not modelled"
+        "winding_temperature",
+        "Tw",
+        _GRID,
+        "degree_Celsius",
+        "winding temperature",
+        "if held there; infinite where it rises without end, missing if not modelled",
     ),
     Quantity(
         "outside_polar_share",
@@ -291,6 +300,25 @@ _OPERATING = (
         "of the propeller at this point, weighted by r^2 chord",
     ),
     Quantity("stalled_share", "", _GRID, "1", "stalled share of the span", "of the propeller, weighted by r^2 chord"),
+    Quantity(
+        "low_reynolds_share",
+        "",
+        _GRID,
+        "1",
+        "share of the span below Reynolds number 60 000",
+        "of the propeller, weighted by r^2 chord",
+    ),
+    Quantity("trust", "", _GRID, "1", "grade of trust", "of the propeller's loads at this point", TRUST_FLAGS),
+    Quantity(
+        "trust_reasons",
+        "",
+        _GRID,
+        "1",
+        "reasons of the grade",
+        "bits: what keeps the grade of trust from being good",
+        None,
+        TRUST_REASONS,
+    ),
     Quantity("status", "", _GRID, "1", "status", "of the propeller solution behind this point", STATUS_FLAGS),
 )
 
@@ -314,6 +342,14 @@ _MARGINS = (
         "A",
         "margin of battery current",
         "battery's largest current less battery current",
+    ),
+    Quantity(
+        "winding_temperature_margin",
+        "",
+        _GRID,
+        "K",
+        "margin of winding temperature",
+        f"what enamel and magnets commonly stand, {WINDING_CEILING:g} degC (common practice, no source), less this",
     ),
 )
 
@@ -366,6 +402,9 @@ _BARE_NAMES = (
     "propeller_efficiency",
     "outside_polar_share",
     "stalled_share",
+    "low_reynolds_share",
+    "trust",
+    "trust_reasons",
     "status",
     "rpm_margin",
 )

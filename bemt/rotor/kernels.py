@@ -16,10 +16,11 @@ so the sign of the unloaded lift chooses the side and the bracket on that side c
 stopped propeller in the wind. Where several roots exist (a lift that falls steeply beyond stall), the first one going
 out from psi = 0, the least induction, is taken and said.
 
-Which root is found never depends on a starting value. Elements and points are first solved together in batches of
-64 lanes by plain Newton steps, a form that the compiler turns into vector instructions; each lane's root then stands
-only if `_first_and_alone` proves it to be the first one. Everything else goes to `solve_element`, which walks outward
-from psi = 0. The proofs work on
+Which root is found never depends on a starting value. `solve_lanes` solves elements and points together in batches of
+`LANES` by Newton steps of second order, a form that the compiler turns into vector instructions; a lane's root stands
+only if a few bounds of the polar prove it to be the first one. `prove_roots` takes the harder ones and proves them
+interval by interval, or walks from where the proof ends; `search_roots` walks outward from psi = 0 for the rest, among
+them Buhl's branch. The proofs work on
 
     h(psi) = G / (sigma cos psi) = cl - tan psi (cd + X),   X = 4 F |sin phi| / sigma,
 
@@ -1610,7 +1611,7 @@ def _write(state, pair, point, element, bound, ln_reynolds, blades, psi, ratio, 
         pressure = math.nan
     alpha = alpha_0 - psi
     ln_re = ln_re_0 + math.log(ratio)
-    row, weight = _row(ln_re, ln_reynolds, 0)
+    row, weight = _row(ln_re, ln_reynolds, np.int64(0))
     rest = 1.0 - weight
     stalled = (
         alpha > rest * bound[row, B_STALL_HIGH] + weight * bound[row + 1, B_STALL_HIGH]
@@ -1646,6 +1647,9 @@ def prove_roots(points, elements, polars, bounds, ln_reynolds, loss, blades, sta
         As for `solve_lanes`; status 1 or 2 where done, 0 where it is left to `search_roots`.
     """
     n_elements = elements.shape[0]
+    # Not literals, of which the compiler would make versions of their own.
+    side = np.int64(1)
+    no = side < 0
     for pair in range(state.shape[1]):
         if state[S_STATUS, pair] > 0.0:
             continue
@@ -1660,7 +1664,7 @@ def prove_roots(points, elements, polars, bounds, ln_reynolds, loss, blades, sta
         done = state[S_STATUS, pair] < 0.0
         moved = not done
         state[S_STATUS, pair] = 0.0
-        row, weight = _row(ln_re_0 + math.log(speed), ln_reynolds, 0)
+        row, weight = _row(ln_re_0 + math.log(speed), ln_reynolds, np.int64(0))
         pg, rise = _compressibility(mach_0 * speed, lift, element)
         inner, outer = state[S_LOW, pair], state[S_HIGH, pair]
         found, clear = True, 0.0
@@ -1668,8 +1672,8 @@ def prove_roots(points, elements, polars, bounds, ln_reynolds, loss, blades, sta
         for attempt in range(2):
             if not done:
                 done, psi, speed, lift, drag, x4, _, row, weight, pg, rise, used = _follow(
-                    False,
-                    False,
+                    no,
+                    no,
                     psi,
                     inner,
                     outer,
@@ -1717,7 +1721,7 @@ def prove_roots(points, elements, polars, bounds, ln_reynolds, loss, blades, sta
                 break
             # Free of roots up to `clear`: walk the rest of the way.
             before, behind, found, used = _search(
-                1, False, clear, psi, alpha_0, s0, c0, element, polar, bound, row, weight, pg, rise, loss
+                side, no, clear, psi, alpha_0, s0, c0, element, polar, bound, row, weight, pg, rise, loss
             )
             state[S_EVALUATIONS, pair] += used
             if not found or abs(behind - psi) <= 1e-9:
@@ -1730,7 +1734,7 @@ def prove_roots(points, elements, polars, bounds, ln_reynolds, loss, blades, sta
         another = False
         if proof != 1:
             another, used = _another_beyond(
-                1, False, psi, alpha_0, phi_0, s0, c0, element, polar, bound, row, weight, pg, rise, loss
+                side, no, psi, alpha_0, phi_0, s0, c0, element, polar, bound, row, weight, pg, rise, loss
             )
             state[S_EVALUATIONS, pair] += used
         status = 2 if another else 1

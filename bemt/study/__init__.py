@@ -1,1 +1,0 @@
-"""Many tables made into one answer: sweeps, calibration, comparison and bands."""
