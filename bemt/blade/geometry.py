@@ -158,7 +158,11 @@ class Propeller:
         if not 0 <= self.hub_diameter < self.diameter:
             raise InputError("hub_diameter", f"{self.hub_diameter:g} m; a hub must be smaller than the propeller")
         if self.root >= self.stations.r_over_R[-1]:
-            raise InputError("hub_diameter", "the hub leaves no blade")
+            raise InputError(
+                "hub_diameter",
+                f"the hub reaches to r/R = {self.root:.3f} and the last station stands at "
+                f"{self.stations.r_over_R[-1]:.3f}: no blade is left; are the units of hub, stations and diameter right?",
+            )
         if self.rpm_limit is not None and not self.rpm_limit > 0:
             raise InputError("rpm_limit", f"{self.rpm_limit:g}; a limit must be positive")
         if self.rotation not in ("right", "left"):
