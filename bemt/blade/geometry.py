@@ -161,7 +161,8 @@ class Propeller:
             raise InputError(
                 "hub_diameter",
                 f"the hub reaches to r/R = {self.root:.3f} and the last station stands at "
-                f"{self.stations.r_over_R[-1]:.3f}: no blade is left; are the units of hub, stations and diameter right?",
+                f"{self.stations.r_over_R[-1]:.3f}: no blade is left; are the units of hub, stations and diameter "
+                "right?",
             )
         if self.rpm_limit is not None and not self.rpm_limit > 0:
             raise InputError("rpm_limit", f"{self.rpm_limit:g}; a limit must be positive")

@@ -1474,16 +1474,56 @@ def _lanes_stalled(n, w, index, polars, bounds, loss):
 
 
 @_jit
-def _copy(state, row, first, count, w, start):
-    """Copy a row of the batch into a row of the state."""
-    target = state[row]
+def _lanes_load(n, w, index, points, elements, ln_chord, tip_square, ln_re_per_chord, blades):
+    """Put the point and the element of every lane in its place."""
+    for i in range(n):
+        p, e = index[2 * LANES + i], index[3 * LANES + i]
+        w[_W_AIRSPEED + i] = points[p, P_AIRSPEED]
+        w[_W_TURNING + i] = points[p, P_OMEGA] * elements[e, E_RADIUS]
+        w[_W_TIP_SQUARE + i] = tip_square[p]
+        w[_W_ALPHA_0 + i] = elements[e, E_TWIST]
+        w[_W_LN_RE_0 + i] = ln_re_per_chord[p] + ln_chord[e]
+        w[_W_MACH_0 + i] = points[p, P_INVERSE_SOUND]
+        w[_W_SIGMA + i] = elements[e, E_SOLIDITY]
+        w[_W_TIP + i] = elements[e, E_TIP]
+        w[_W_ROOT + i] = elements[e, E_ROOT]
+        w[_W_DIVERGENCE + i] = elements[e, E_DIVERGENCE]
+        w[_W_BETA + i] = elements[e, E_TABLE_BETA]
+        w[_W_RADIUS + i] = elements[e, E_RADIUS]
+        w[_W_STRIP + i] = blades * elements[e, E_CHORD] * elements[e, E_WIDTH]
+        w[_W_LN_RE_LOW + i] = elements[e, E_LN_RE_LOW]
+        w[_W_LN_RE_HIGH + i] = elements[e, E_LN_RE_HIGH]
+        index[i] = int(elements[e, E_POLAR])
+
+
+@_jit
+def _lanes_store(count, w, index, n_elements, rounds, state):
+    """Put the result of the first lanes in its place in the state."""
     for i in range(count):
-        target[first + i] = w[start + i]
+        pair = index[2 * LANES + i] * n_elements + index[3 * LANES + i]
+        state[S_PSI, pair] = w[_W_PSI + i]
+        # A lane that has not arrived goes on from its next step, not from the last one evaluated.
+        state[S_SPEED, pair] = w[_W_NOW + i] if w[_W_DONE + i] == 1.0 else w[_W_SPEED + i]
+        state[S_LIFT, pair] = w[_W_LIFT + i]
+        state[S_DRAG, pair] = w[_W_DRAG + i]
+        state[S_X4, pair] = w[_W_X4 + i]
+        state[S_INDUCTION, pair] = math.nan
+        state[S_STATUS, pair] = w[_W_PLAIN + i]
+        state[S_THRUST, pair] = w[_W_THRUST + i]
+        state[S_TORQUE, pair] = w[_W_TORQUE + i]
+        state[S_STALLED, pair] = w[_W_STALLED + i]
+        state[S_OUTSIDE, pair] = w[_W_OUTSIDE + i]
+        state[S_LOW_RE, pair] = w[_W_LOW_RE + i]
+        state[S_EVALUATIONS, pair] = rounds
+        state[S_LOW, pair] = w[_W_LOW + i]
+        state[S_HIGH, pair] = w[_W_HIGH + i]
 
 
 @_jit
 def solve_lanes(points, elements, polars, bounds, ln_reynolds, loss, blades, state, scratch, index):
     """Solve every element at every point by Newton steps, and keep each root that is plainly the first one.
+
+    Three steps are enough for most; the others are gathered into batches of their own and keep nobody waiting.
 
     Parameters
     ----------
@@ -1498,7 +1538,7 @@ def solve_lanes(points, elements, polars, bounds, ln_reynolds, loss, blades, sta
     state : array (S_ROWS, n_points * n_elements)
         Written; the elements of a point stand together. Status 1 where done, else for `prove_roots`.
     scratch : array (scratch_size(n_points, n_elements),)
-    index : array of int64 (2 * LANES,)
+    index : array of int64 (index_size(n_points, n_elements),)
         Working space, whatever it holds.
     """
     n_points = points.shape[0]
@@ -1509,8 +1549,9 @@ def solve_lanes(points, elements, polars, bounds, ln_reynolds, loss, blades, sta
     free = _W_END + n_elements
     tip_square = scratch[free : free + n_points]
     ln_re_per_chord = scratch[free + n_points : free + 2 * n_points]
+    queue = index[4 * LANES :]
     w[:] = 0.0
-    index[:] = 0
+    index[: 4 * LANES] = 0
     last = float(polars.shape[2] - 1)
     angle_scale = last / (2.0 * math.pi)
     farthest = 0.0
@@ -1521,62 +1562,66 @@ def solve_lanes(points, elements, polars, bounds, ln_reynolds, loss, blades, sta
         tip = points[p, P_OMEGA] * farthest
         tip_square[p] = points[p, P_AIRSPEED] * points[p, P_AIRSPEED] + tip * tip
         ln_re_per_chord[p] = 0.5 * math.log(tip_square[p]) + math.log(points[p, P_INVERSE_VISCOSITY])
-    for first in range(0, n_pairs, LANES):
+    n = min(LANES, index.shape[0])  # LANES; known only at run time, so that loops are not unrolled to the end
+    waiting = 0
+    first = 0
+    second_pass = False
+    while True:
+        if first >= n_pairs and not second_pass:
+            second_pass = True
+            n_pairs = waiting
+            first = 0
+        if first >= n_pairs:
+            break
         count = min(LANES, n_pairs - first)
-        p = first // n_elements
-        e = first - p * n_elements
-        for i in range(LANES):
-            w[_W_AIRSPEED + i] = points[p, P_AIRSPEED]
-            w[_W_TURNING + i] = points[p, P_OMEGA] * elements[e, E_RADIUS]
-            w[_W_TIP_SQUARE + i] = tip_square[p]
-            w[_W_ALPHA_0 + i] = elements[e, E_TWIST]
-            w[_W_LN_RE_0 + i] = ln_re_per_chord[p] + ln_chord[e]
-            w[_W_MACH_0 + i] = points[p, P_INVERSE_SOUND]
-            w[_W_SIGMA + i] = elements[e, E_SOLIDITY]
-            w[_W_TIP + i] = elements[e, E_TIP]
-            w[_W_ROOT + i] = elements[e, E_ROOT]
-            w[_W_DIVERGENCE + i] = elements[e, E_DIVERGENCE]
-            w[_W_BETA + i] = elements[e, E_TABLE_BETA]
-            w[_W_RADIUS + i] = elements[e, E_RADIUS]
-            w[_W_STRIP + i] = blades * elements[e, E_CHORD] * elements[e, E_WIDTH]
-            w[_W_LN_RE_LOW + i] = elements[e, E_LN_RE_LOW]
-            w[_W_LN_RE_HIGH + i] = elements[e, E_LN_RE_HIGH]
-            index[i] = int(elements[e, E_POLAR])
-            if i < count - 1:
-                e += 1
-                if e == n_elements:
-                    e = 0
-                    p += 1
-        n = index.shape[0] // 2  # LANES; known only at run time, loops are not unrolled to the end
+        if second_pass:
+            for i in range(n):
+                pair = queue[first + min(i, count - 1)]
+                p = pair // n_elements
+                index[2 * LANES + i] = p
+                index[3 * LANES + i] = pair - p * n_elements
+        else:
+            p = first // n_elements
+            e = first - p * n_elements
+            for i in range(n):
+                index[2 * LANES + i] = p
+                index[3 * LANES + i] = e
+                if i < count - 1:
+                    e += 1
+                    if e == n_elements:
+                        e = 0
+                        p += 1
+        _lanes_load(n, w, index, points, elements, ln_chord, tip_square, ln_re_per_chord, blades)
         _lanes_start(n, w)
         _lanes_guess(n, w, index, polars, bounds, ln_reynolds, angle_scale, last)
         rounds = 1.0
-        for _ in range(5):  # the stragglers, at the edge of stall, cost less one by one
+        limit = 3
+        if second_pass:
+            limit = 3
+            rounds = 4.0
+            for i in range(n):
+                pair = index[2 * LANES + i] * n_elements + index[3 * LANES + i]
+                w[_W_PSI + i] = state[S_PSI, pair]
+                w[_W_SPEED + i] = state[S_SPEED, pair]
+                w[_W_LIFT + i] = state[S_LIFT, pair]
+                w[_W_LOW + i] = state[S_LOW, pair]
+                w[_W_HIGH + i] = state[S_HIGH, pair]
+        for _ in range(limit):
             rounds += 1.0
             _lanes_flow(n, w, loss[0, 4], angle_scale, last)
             _lanes_look_up(n, w, index, polars, ln_reynolds, loss)
             _lanes_residual(n, w, angle_scale)
-            arrived = _lanes_step(n, w)
-            if arrived == LANES:
+            if _lanes_step(n, w) == LANES:
                 break
         _lanes_finish(n, w, index, bounds)
         _lanes_stalled(n, w, index, polars, bounds, loss)
-        _copy(state, S_PSI, first, count, w, _W_PSI)
-        _copy(state, S_SPEED, first, count, w, _W_NOW)
-        _copy(state, S_LIFT, first, count, w, _W_LIFT)
-        _copy(state, S_DRAG, first, count, w, _W_DRAG)
-        _copy(state, S_X4, first, count, w, _W_X4)
-        _copy(state, S_STATUS, first, count, w, _W_PLAIN)
-        _copy(state, S_THRUST, first, count, w, _W_THRUST)
-        _copy(state, S_TORQUE, first, count, w, _W_TORQUE)
-        _copy(state, S_STALLED, first, count, w, _W_STALLED)
-        _copy(state, S_OUTSIDE, first, count, w, _W_OUTSIDE)
-        _copy(state, S_LOW_RE, first, count, w, _W_LOW_RE)
-        _copy(state, S_LOW, first, count, w, _W_LOW)
-        _copy(state, S_HIGH, first, count, w, _W_HIGH)
-        for i in range(count):
-            state[S_INDUCTION, first + i] = math.nan
-            state[S_EVALUATIONS, first + i] = rounds
+        _lanes_store(count, w, index, n_elements, rounds, state)
+        if not second_pass:
+            for i in range(count):
+                if w[_W_DONE + i] == 0.0:
+                    queue[waiting] = first + i
+                    waiting += 1
+        first += LANES
 
 
 @_jit
@@ -1818,6 +1863,20 @@ def scratch_size(n_points: int, n_elements: int) -> int:
     int
     """
     return _W_END + n_elements + 2 * n_points
+
+
+def index_size(n_points: int, n_elements: int) -> int:
+    """Length of the working space of `solve_lanes` for integers.
+
+    Parameters
+    ----------
+    n_points, n_elements : int
+
+    Returns
+    -------
+    int
+    """
+    return 4 * LANES + n_points * n_elements
 
 
 def loss_table(cells: int = 512, end: float = 5.2) -> np.ndarray:

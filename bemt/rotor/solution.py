@@ -180,7 +180,11 @@ def solve_pairs(points: FloatArray, elements: BladeElements) -> FloatArray:
         elements.blades,
         state,
     )
-    k.solve_lanes(*common, np.empty(k.scratch_size(n_points, n_elements)), np.empty(2 * k.LANES, dtype=np.int64))
+    k.solve_lanes(
+        *common,
+        np.empty(k.scratch_size(n_points, n_elements)),
+        np.empty(k.index_size(n_points, n_elements), dtype=np.int64),
+    )
     if (state[k.S_STATUS] <= 0.0).any():
         k.prove_roots(*common)
         if (state[k.S_STATUS] <= 0.0).any():
