@@ -20,10 +20,11 @@ from scipy.interpolate import CubicSpline
 
 Floats = NDArray[np.float64]
 
-GENERATOR_VERSION = 1
+GENERATOR_VERSION = 2
 NEURALFOIL_VERSION = "0.3.3"
 MODEL_SIZE = "xlarge"
-CRITICAL_AMPLIFICATION = 8.0  # why: docs/sections.md, "Which amplification"
+CRITICAL_AMPLIFICATION = 7.5  # why: docs/sections.md, "Which amplification"
+LIFT_SHARE = 0.92  # of the computed lift that sections have when measured; docs/sections.md, "Lift as measured"
 
 ALPHA_DEG: Floats = np.arange(-15.0, 20.01, 0.5)
 REYNOLDS: Floats = np.array(
@@ -277,7 +278,7 @@ def member(outline: Floats) -> tuple[Floats, Floats, Floats]:
     Returns
     -------
     lift, drag, moment : ndarray, shape (n_re, n_alpha)
-        As the families carry them: after `hold_past_stall` and `extrapolate_reynolds`.
+        As the families carry them: lift times `LIFT_SHARE`, after `hold_past_stall` and `extrapolate_reynolds`.
     """
     import neuralfoil  # a generator-only dependency
 
@@ -286,6 +287,7 @@ def member(outline: Floats) -> tuple[Floats, Floats, Floats]:
         outline, alpha.ravel(), reynolds.ravel(), n_crit=CRITICAL_AMPLIFICATION, model_size=MODEL_SIZE
     )
     lift, drag, moment = (np.asarray(raw[key], dtype=np.float64).reshape(alpha.shape) for key in ("CL", "CD", "CM"))
+    lift *= LIFT_SHARE
     lift = np.array([hold_past_stall(ALPHA_DEG, *row) for row in zip(lift, drag, strict=True)])
     extrapolate_reynolds(lift, drag, moment)
     return lift, drag, moment
@@ -353,6 +355,7 @@ def write(name: str, recipe: Recipe, folder: Path) -> Path:
         "method_version": NEURALFOIL_VERSION,
         "model_size": MODEL_SIZE,
         "critical_amplification": CRITICAL_AMPLIFICATION,
+        "lift_share": LIFT_SHARE,
         "separated_drag": SEPARATED_DRAG,
     }
     path = folder / f"{name}.npz"

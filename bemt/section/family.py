@@ -327,7 +327,8 @@ def family(name: str) -> Family:
         array.setflags(write=False)
     source = (
         f"family {name!r} ({provenance['description']}): {provenance['method']} {provenance['method_version']}, "
-        f"model {provenance['model_size']}, critical amplification {provenance['critical_amplification']:g}"
+        f"model {provenance['model_size']}, critical amplification {provenance['critical_amplification']:g}, "
+        f"lift times {provenance['lift_share']:g}"
     )
     return Family(
         name=name,
