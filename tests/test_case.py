@@ -450,13 +450,14 @@ def test_axes_as_lists_and_ranges(tmp_path: Path) -> None:
     grid = """[grid]
 advance_ratio = [0, 0.2, 0.5]
 rpm = { from = "50 rev/s", to = 6000, count = 4 }
-incidence = ["0 deg"]
+incidence = ["0 deg", "0.5 rad"]
 airspeed = { from = "0 m/s", to = "36 km/h", count = 3 }
 throttle = [0.5, 1]
 """
     case = load_case(write_case(tmp_path, CASE.partition("[grid]")[0] + grid))
     assert case.grid.advance_ratio.tolist() == [0, 0.2, 0.5]
     np.testing.assert_allclose(case.grid.rpm, [3000, 4000, 5000, 6000])
+    np.testing.assert_allclose(case.grid.incidence, [0, 0.5])
     assert case.envelope_airspeed is not None
     np.testing.assert_allclose(case.envelope_airspeed, [0, 5, 10])
     assert case.envelope_throttle is not None
@@ -533,7 +534,7 @@ def test_everything_wrong_comes_at_once(tmp_path: Path) -> None:
         .replace('"flat-bottom"', '"flat-botom"')
         .replace("rpm = [4000, 8000]", "rpm = [4000, 0]")
         + DRIVE.replace('winding_resistance = "50 mohm"\n', "").replace('"2.2 A*h"', "2.2")
-        + '[model]\ninflow = "helix"\nelements = 3\n'
+        + '[model]\ninflow = "helical"\nelements = 3\n'
     )
     found = complaints_of(write_case(tmp_path, text, {"blade.csv": BLADE.replace("100,24", "100,0")}))
     for field in (

@@ -123,6 +123,11 @@ def _grid(case: Case) -> list[str]:
     return [
         f"advance ratio {ratios[0]:g} to {ratios[-1]:g} in {ratios.size} steps; rpm "
         + ", ".join(f"{value:g}" for value in rpm)
+        + (
+            "; incidence " + ", ".join(f"{math.degrees(value):.4g}" for value in case.grid.incidence) + " deg"
+            if case.grid.inclined
+            else ""
+        )
         + f"; helical tip Mach number up to {mach:.2f}"
     ]
 

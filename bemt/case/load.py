@@ -54,9 +54,6 @@ _LATER_KEYS: dict[tuple[str, str], tuple[str, str]] = {
     ("section", "shape"): ("a section by its shape", "use polars or family"),
 }
 _LATER_VALUES: dict[tuple[str, ...], tuple[object, str]] = {
-    ("model", "inflow"): ("helix", 'use "momentum"'),
-    ("model", "end_loss", "law"): ("goldstein", 'use "prandtl" or "none"'),
-    ("model", "stall_delay"): ("du-selig", 'use "snel" or "none"'),
     ("motor", "label_only"): (True, "measure winding_resistance and one no_load reading"),
     ("airframe", "hover"): (True, "give a wing, or leave [airframe] out"),
 }
@@ -349,7 +346,9 @@ class _Loader:
                 end_loss_ends=tuple(dict.fromkeys(section.end_loss.ends)),
                 stall_delay=section.stall_delay,
                 stall_strength=section.stall_strength,
+                post_stall=section.post_stall,
                 plate_drag=section.plate_drag,
+                reynolds_rule=section.reynolds_rule,
                 drag_scale=drag_scale,
             )
         return None
@@ -561,7 +560,7 @@ class _Loader:
     # --- grid --------------------------------------------------------------------------------------------------------
 
     def axes(self, section: models.GridSection) -> dict[str, FloatArray | None] | None:
-        """Return the axes asked for, each ascending; incidence is refused unless it is zero."""
+        """Return the axes asked for, each ascending."""
         before = len(self.complaints)
         found: dict[str, FloatArray | None] = {}
         for name in ("advance_ratio", "rpm", "incidence", "airspeed", "throttle"):
@@ -571,11 +570,7 @@ class _Loader:
                 continue
             spaced = not isinstance(series, list)
             values = np.linspace(series.start, series.end, series.count) if spaced else np.array(series)
-            if name == "incidence":
-                if np.any(values != 0.0):
-                    what = "an angle between flight path and shaft"
-                    self.complain(("grid", name), f'{what} {_LATER}; leave it out, or write ["0 deg"]')
-                continue
+            values = np.where(np.abs(values) < 1e-12 * np.abs(values).max(), 0.0, values)
             if np.any(np.diff(values) <= 0.0):
                 message = "from must be less than to" if spaced else "values must ascend, each once"
                 self.complain(("grid", name), message)
@@ -589,7 +584,7 @@ class _Loader:
             advance_ratio = np.linspace(0.0, end, DEFAULT_ADVANCE_RATIOS)
             self.notices.append(f"no advance_ratio in [grid]: 0 to {end:g} is taken from the pitch of the blade")
         if rpm is None:
-            rpm = default_rpm(propeller, air, float(advance_ratio[-1]))
+            rpm = default_rpm(propeller, air, float(np.abs(advance_ratio).max()))
             reason = "the rpm limit" if rpm[-1] == propeller.rpm_limit else f"a tip Mach number of {DEFAULT_TIP_MACH:g}"
             self.notices.append(f"no rpm in [grid]: {rpm[0]:g} to {rpm[-1]:g} rpm is taken from {reason}")
             if propeller.rpm_limit is None:
@@ -598,7 +593,8 @@ class _Loader:
                     "no rpm_limit given"
                 )
         with self.about(("grid",)):
-            return Grid(advance_ratio=advance_ratio, rpm=rpm)
+            incidence = axes["incidence"]
+            return Grid(advance_ratio=advance_ratio, rpm=rpm, incidence=np.zeros(1) if incidence is None else incidence)
         return None
 
     # --- remarks -----------------------------------------------------------------------------------------------------

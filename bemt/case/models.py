@@ -115,8 +115,8 @@ _AsList, _AsRange, _Choice = Tag(LIST_TAG), Tag(RANGE_TAG), Discriminator(_list_
 _SomeValues = Field(min_length=1, max_length=10_000)
 
 # Spelled out one by one: an alias with a type variable would leave the range's own values unchecked.
-NumberSeries: TypeAlias = Annotated[
-    Annotated[list[NotNegative], _SomeValues, _AsList] | Annotated[Range[NotNegative], _AsRange], _Choice
+RatioSeries: TypeAlias = Annotated[
+    Annotated[list[float], _SomeValues, _AsList] | Annotated[Range[float], _AsRange], _Choice
 ]
 ShareSeries: TypeAlias = Annotated[
     Annotated[list[Share], _SomeValues, _AsList] | Annotated[Range[Share], _AsRange], _Choice
@@ -185,14 +185,16 @@ class ModelSection(Section):
     end_loss: EndLoss = EndLoss()
     stall_delay: Literal["snel", "du-selig", "none"] = "snel"
     stall_strength: Share = 0.5
+    post_stall: Literal["plate", "viterna", "aerodas"] = "plate"
     plate_drag: Annotated[float, Field(ge=1.0, le=2.2)] = 1.8
+    reynolds_rule: Literal["power-law", "held"] = "power-law"
     drag_scale: Annotated[float, Field(ge=0.1, le=10.0)] | None = None
 
 
 class GridSection(Section):
     """[grid]: what is computed and printed."""
 
-    advance_ratio: NumberSeries | None = None
+    advance_ratio: RatioSeries | None = None
     rpm: RpmSeries | None = None
     incidence: AngleSeries | None = None
     airspeed: SpeedSeries | None = None

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import math
+import re
 from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -11,12 +12,17 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
-from bemt.case.complaints import Complaints, did_you_mean
+from bemt.case.complaints import Complaints, did_you_mean, nearest
 from bemt.case.units import ANGLE, FORCE, LENGTH, SPEED, Kind, conversion
 from bemt.errors import InputError
 from bemt.section.polar import NARROWEST_ALPHA_DEG, PolarTable
 
 FloatArray = NDArray[np.float64]
+
+UNCERTAINTY = "_u"
+"""Ending of a column of standard uncertainties."""
+
+_HEADED_POWER = re.compile(r"(?<=[A-Za-z])([2-9])\b")
 
 RADIUS_TOLERANCE = 1e-3
 """By how much the tip station may lie beyond the tip: the rounding of a ruler, not a wrong diameter."""
@@ -40,7 +46,9 @@ class Column:
     @property
     def spelling(self) -> str:
         """How a header of this column is written, in its first fitting unit."""
-        return self.name if self.kind is None else f"{self.name}_{self.kind.fitting[0].replace('/', '_')}"
+        if self.kind is None:
+            return self.name
+        return f"{self.name}_{self.kind.fitting[0].replace('/', '_').replace('*', '').replace('^', '')}"
 
 
 @dataclass(frozen=True)
@@ -168,7 +176,9 @@ def decode(data: bytes) -> str:
     return data.decode("utf-8-sig").replace("\r\n", "\n").replace("\r", "\n")
 
 
-def read_sheet(path: Path, file: str, columns: Sequence[Column], complaints: Complaints) -> Sheet | None:
+def read_sheet(
+    path: Path, file: str, columns: Sequence[Column], complaints: Complaints, *, uncertainties: bool = False
+) -> Sheet | None:
     """Read a comma-separated table whose columns stand under known names.
 
     Lines that are empty or begin with "#" are passed over.
@@ -183,6 +193,9 @@ def read_sheet(path: Path, file: str, columns: Sequence[Column], complaints: Com
         What may stand in it.
     complaints : Complaints
         Takes what is found.
+    uncertainties : bool
+        Whether a header may end in `_u`: a column of standard uncertainties, which `Sheet.values` has under the name
+        of its quantity with the same ending.
 
     Returns
     -------
@@ -205,23 +218,23 @@ def read_sheet(path: Path, file: str, columns: Sequence[Column], complaints: Com
         return None
     (header_line, header), rows = numbered[0], numbered[1:]
     before = len(complaints)
-    found = _columns_of(header, header_line, file, columns, complaints)
+    found = _columns_of(header, header_line, file, columns, complaints, uncertainties)
     if len(complaints) > before:
         return None
     if not rows:
         complaints.add(file, header_line, "", "has a header and no rows")
         return None
-    values = {name: np.full(len(rows), np.nan) for name, _ in found}
-    raw: dict[str, list[str]] = {name: [] for name, _ in found}
+    values = {name: np.full(len(rows), np.nan) for name, *_ in found}
+    raw: dict[str, list[str]] = {name: [] for name, *_ in found}
     for index, (row_line, row) in enumerate(rows):
         if len(row) != len(header):
             complaints.add(file, row_line, "", f"{len(row)} cells; the header has {len(header)} columns")
         cells = (row + [""] * len(header))[: len(header)]
-        for (name, factor), heading, cell in zip(found, header, cells, strict=True):
+        for (name, factor, offset), heading, cell in zip(found, header, cells, strict=True):
             raw[name].append(cell)
             value = _number(cell)
             if value is not None:
-                values[name][index] = value * factor
+                values[name][index] = value * factor + offset
             elif len(row) == len(header):
                 words = f"{cell!r} is not a number" if cell else "is empty; a number is needed"
                 complaints.add(file, row_line, heading, words)
@@ -231,7 +244,7 @@ def read_sheet(path: Path, file: str, columns: Sequence[Column], complaints: Com
         lines=tuple(line for line, _ in rows),
         values=values,
         raw=raw,
-        headers={name: heading for (name, _), heading in zip(found, header, strict=True)},
+        headers={name: heading for (name, *_), heading in zip(found, header, strict=True)},
         complete=len(complaints) == before,
     )
 
@@ -245,35 +258,46 @@ def _number(cell: str) -> float | None:
 
 
 def _columns_of(
-    header: list[str], line: int, file: str, columns: Sequence[Column], complaints: Complaints
-) -> list[tuple[str, float]]:
-    """Return name and factor to SI of each column of a header."""
+    header: list[str], line: int, file: str, columns: Sequence[Column], complaints: Complaints, uncertainties: bool
+) -> list[tuple[str, float, float]]:
+    """Return name, and factor and offset to SI, of each column of a header."""
     if len(header) == 1 and any(mark in header[0] for mark in ";\t"):
         complaints.add(file, line, "", "columns are separated by commas")
         return []
-    found: list[tuple[str, float]] = []
+    found: list[tuple[str, float, float]] = []
     for heading in header:
         with complaints.gathered(file, line, heading):
-            name, factor = _column_of(heading, columns)
-            if name in (known for known, _ in found):
+            if uncertainties and heading.endswith(UNCERTAINTY):
+                name, factor, _ = _column_of(heading.removesuffix(UNCERTAINTY), columns)
+                name, offset = name + UNCERTAINTY, 0.0
+            else:
+                name, factor, offset = _column_of(heading, columns)
+            if name in (known for known, *_ in found):
                 raise ValueError("this column is there twice")
-            found.append((name, factor))
+            found.append((name, factor, offset))
     return found
 
 
-def _column_of(heading: str, columns: Sequence[Column]) -> tuple[str, float]:
+def _column_of(heading: str, columns: Sequence[Column]) -> tuple[str, float, float]:
     if not heading:
         raise ValueError("a column without a name")
+    known = [column.spelling for column in columns]
     for column in columns:
         if column.kind is None:
             if heading == column.name:
-                return column.name, 1.0
+                return column.name, 1.0, 0.0
         elif heading == column.name:
             raise ValueError(f"a {column.kind.name} column ends in its unit, such as {column.spelling}")
         elif heading.startswith(column.name + "_"):
-            # An underscore inside the unit stands for "per": airspeed_m_s.
-            return column.name, conversion(heading[len(column.name) + 1 :].replace("_", "/", 1), column.kind)
-    known = [column.spelling for column in columns]
+            # An underscore inside the unit stands for "per", a figure for a power: airspeed_m_s, air_density_kg_m3.
+            unit = _HEADED_POWER.sub(r"^\1", heading[len(column.name) + 1 :].replace("_", "/", 1))
+            try:
+                return column.name, *conversion(unit, column.kind)
+            except ValueError as error:
+                near = nearest(heading, known)
+                if near in (None, column.spelling):
+                    raise
+                raise ValueError(f"unknown column (did you mean {near!r}?)") from error
     raise ValueError(f"unknown column{did_you_mean(heading, known)}; known ones: {', '.join(known)}")
 
 
@@ -420,8 +444,8 @@ _POLAR_COLUMNS = (
 def read_polars(path: Path, file: str, complaints: Complaints) -> PolarTable | None:
     """Read the polars of one section.
 
-    The angles of the Reynolds numbers need not agree: all are brought to the union of the angles over the range they
-    share, by straight lines between rows.
+    The angles of the Reynolds and Mach numbers need not agree: all are brought to the union of the angles over the
+    range they share, by straight lines between rows. With several Mach numbers each needs all Reynolds numbers.
 
     Parameters
     ----------
@@ -451,12 +475,9 @@ def read_polars(path: Path, file: str, complaints: Complaints) -> PolarTable | N
     sheet.complain_where(values["cd"] <= 0, "cd", "must be more than 0", complaints)
     sheet.complain_where(values["cd"] > 5, "cd", "is no drag coefficient of a section", complaints)
     sheet.complain_where(np.abs(values["cl"]) > 5, "cl", "is no lift coefficient of a section", complaints)
-    mach = values.get("mach", np.zeros(1))
     if "mach" in values:
-        sheet.complain_where((mach < 0) | (mach >= 1), "mach", "must lie between 0 and 1", complaints)
-        sheet.complain_where(
-            mach != mach[0], "mach", f"differs from {mach[0]:g} above; one Mach number a file", complaints
-        )
+        wrong = (values["mach"] < 0) | (values["mach"] >= 1)
+        sheet.complain_where(wrong, "mach", "must lie between 0 and 1", complaints)
     _complain_of_repeated_points(sheet, complaints)
     reynolds = np.unique(values["reynolds"])
     if sheet.complete and reynolds.size < 2:
@@ -466,25 +487,45 @@ def read_polars(path: Path, file: str, complaints: Complaints) -> PolarTable | N
             "reynolds",
             f"only {reynolds[0]:g}; at least two Reynolds numbers are needed to interpolate between",
         )
-    for number in reynolds[np.isfinite(reynolds)]:
-        _complain_of_reach(sheet, float(number), complaints)
+    mach = np.unique(values["mach"]) if "mach" in values else np.zeros(1)
+    blocks = _blocks(sheet, mach, reynolds, complaints)
     if len(complaints) > before:
         return None
-    return _common_angles(sheet, reynolds, float(mach[0]), complaints)
+    return _common_angles(sheet, mach, reynolds, blocks, complaints)
 
 
 def _complain_of_repeated_points(sheet: Sheet, complaints: Complaints) -> None:
-    seen: dict[tuple[float, float], int] = {}
+    axes = [name for name in ("alpha", "reynolds", "mach") if name in sheet.values]
+    seen: dict[tuple[float, ...], int] = {}
     for row, line in enumerate(sheet.lines):
-        point = (float(sheet.values["reynolds"][row]), float(sheet.values["alpha"][row]))
+        point = tuple(float(sheet.values[name][row]) for name in axes)
         if point in seen:
-            message = f"{sheet.raw['alpha'][row]} at reynolds {point[0]:g} stands on line {seen[point]} already"
+            where = " and ".join(f"{name} {value:g}" for name, value in zip(axes[1:], point[1:], strict=True))
+            message = f"{sheet.raw['alpha'][row]} at {where} stands on line {seen[point]} already"
             complaints.add(sheet.file, line, sheet.headers["alpha"], message)
         seen.setdefault(point, line)
 
 
-def _complain_of_reach(sheet: Sheet, reynolds: float, complaints: Complaints) -> None:
-    rows = np.flatnonzero(sheet.values["reynolds"] == reynolds)
+def _blocks(sheet: Sheet, mach: FloatArray, reynolds: FloatArray, complaints: Complaints) -> list[NDArray[np.intp]]:
+    """Rows of each Mach and, within it, Reynolds number, by ascending angle; complain of what is missing."""
+    values = sheet.values
+    blocks = []
+    for number in mach:
+        at_mach = values["mach"] == number if mach.size > 1 else np.ones(len(sheet.lines), dtype=bool)
+        for wanted in reynolds:
+            rows = np.flatnonzero(at_mach & (values["reynolds"] == wanted))
+            blocks.append(rows[np.argsort(values["alpha"][rows])])
+            where = f"reynolds {wanted:g}" + (f" and mach {number:g}" if mach.size > 1 else "")
+            if rows.size:
+                _complain_of_reach(sheet, rows, where, complaints)
+            elif sheet.complete:
+                line = sheet.lines[int(np.argmax(at_mach))]
+                message = f"no row has {where}; with several Mach numbers each needs all Reynolds numbers of the file"
+                complaints.add(sheet.file, line, sheet.headers["mach"], message)
+    return blocks
+
+
+def _complain_of_reach(sheet: Sheet, rows: NDArray[np.intp], where: str, complaints: Complaints) -> None:
     angles = np.degrees(sheet.values["alpha"][rows])
     low, high = NARROWEST_ALPHA_DEG
     if not np.isfinite(angles).all():
@@ -492,24 +533,26 @@ def _complain_of_reach(sheet: Sheet, reynolds: float, complaints: Complaints) ->
     if angles.min() > low + 1e-6 or angles.max() < high - 1e-6:
         complaints.add(
             sheet.file,
-            sheet.lines[rows[0]],
+            sheet.lines[rows.min()],
             sheet.headers["alpha"],
-            f"at reynolds {reynolds:g} the angles reach from {angles.min():g} to {angles.max():g} deg; they must reach "
+            f"at {where} the angles reach from {angles.min():g} to {angles.max():g} deg; they must reach "
             f"at least from {low:g} to {high:g} deg, past the stall",
         )
 
 
-def _common_angles(sheet: Sheet, reynolds: FloatArray, mach: float, complaints: Complaints) -> PolarTable | None:
+def _common_angles(
+    sheet: Sheet, mach: FloatArray, reynolds: FloatArray, blocks: list[NDArray[np.intp]], complaints: Complaints
+) -> PolarTable | None:
     values = sheet.values
-    groups = [np.flatnonzero(values["reynolds"] == number) for number in reynolds]
-    groups = [rows[np.argsort(values["alpha"][rows])] for rows in groups]
-    low = max(values["alpha"][rows[0]] for rows in groups)
-    high = min(values["alpha"][rows[-1]] for rows in groups)
+    low = max(values["alpha"][rows[0]] for rows in blocks)
+    high = min(values["alpha"][rows[-1]] for rows in blocks)
     alpha = np.unique(values["alpha"])
     alpha = alpha[(alpha >= low) & (alpha <= high)]
+    shape = (mach.size, reynolds.size, alpha.size) if mach.size > 1 else (reynolds.size, alpha.size)
 
     def over_angles(name: str) -> FloatArray:
-        return np.array([np.interp(alpha, values["alpha"][rows], values[name][rows]) for rows in groups])
+        over = [np.interp(alpha, values["alpha"][rows], values[name][rows]) for rows in blocks]
+        return np.array(over).reshape(shape)
 
     try:
         return PolarTable(
@@ -519,7 +562,7 @@ def _common_angles(sheet: Sheet, reynolds: FloatArray, mach: float, complaints: 
             drag=over_angles("cd"),
             moment=over_angles("cm") if "cm" in values else None,
             source=sheet.file,
-            mach=mach,
+            mach=mach if mach.size > 1 else float(mach[0]),
         )
     except InputError as error:
         complaints.add(sheet.file, sheet.header_line, error.field, error.message)

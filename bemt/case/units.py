@@ -92,6 +92,7 @@ def registry() -> pint.UnitRegistry[float]:
 
     units: pint.UnitRegistry[float] = pint.UnitRegistry(cache_folder=None)
     units.define("rev = revolution")
+    units.define("newton_meter = newton * meter = Nm")  # the library would read a dimensionless "number" times metre
     return units
 
 
@@ -121,8 +122,8 @@ def parse_unit(text: str) -> pint.Unit:
         raise ValueError(f"{text!r} is not a unit") from error
 
 
-def conversion(unit_text: str, kind: Kind) -> float:
-    """Return the factor from a unit without an offset to the SI unit of its kind.
+def conversion(unit_text: str, kind: Kind) -> tuple[float, float]:
+    """Return factor and offset from a unit to the SI unit of its kind.
 
     Parameters
     ----------
@@ -133,14 +134,17 @@ def conversion(unit_text: str, kind: Kind) -> float:
 
     Returns
     -------
-    float
+    factor, offset : float
+        The offset is 0 but for temperatures.
 
     Raises
     ------
     ValueError
         If the unit is unknown or does not measure this kind of quantity.
     """
-    return _to_si(1.0, _fitting_unit(unit_text, kind), kind)
+    unit = _fitting_unit(unit_text, kind)
+    offset = _to_si(0.0, unit, kind)
+    return (_to_si(1.0, unit, kind) - offset if offset else _to_si(1.0, unit, kind)), offset
 
 
 def parse_quantity(text: str, kind: Kind) -> float:

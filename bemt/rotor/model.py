@@ -6,10 +6,12 @@ from dataclasses import dataclass
 
 from bemt.errors import InputError
 
-END_LOSS_LAWS = ("prandtl", "none")
+END_LOSS_LAWS = ("prandtl", "goldstein", "none")
 END_LOSS_ENDS = ("tip", "root")
-STALL_DELAY_LAWS = ("snel", "none")
-INFLOW_LAWS = ("momentum",)
+STALL_DELAY_LAWS = ("snel", "du-selig", "none")
+POST_STALL_LAWS = ("plate", "viterna", "aerodas")
+REYNOLDS_RULES = ("power-law", "held")
+INFLOW_LAWS = ("momentum", "helix")
 
 
 @dataclass(frozen=True)
@@ -20,18 +22,22 @@ class Model:
     ----------
     elements : int
         Blade elements, cosine spaced from root to tip; 8 to 400.
-    inflow : {"momentum"}
+    inflow : {"momentum", "helix"}
         Law that ties the induced velocity to the loading.
-    end_loss : {"prandtl", "none"}
+    end_loss : {"prandtl", "goldstein", "none"}
         Loss of circulation at the blade's ends.
     end_loss_ends : tuple of {"tip", "root"}
         Ends at which it is applied.
-    stall_delay : {"snel", "none"}
-        Gain of lift beyond stall by rotation.
+    stall_delay : {"snel", "du-selig", "none"}
+        What rotation does to lift and drag beyond stall.
     stall_strength : float
         Share of the stall-delay law that is applied, 0 to 1.
+    post_stall : {"plate", "viterna", "aerodas"}
+        Law of lift and drag past the section's data.
     plate_drag : float
         Section drag coefficient at 90 deg.
+    reynolds_rule : {"power-law", "held"}
+        Drag at Reynolds numbers beyond the section's data.
     drag_scale : float
         Factor on the section's attached-flow drag.
 
@@ -47,7 +53,9 @@ class Model:
     end_loss_ends: tuple[str, ...] = END_LOSS_ENDS
     stall_delay: str = "snel"
     stall_strength: float = 0.5
+    post_stall: str = "plate"
     plate_drag: float = 1.8
+    reynolds_rule: str = "power-law"
     drag_scale: float = 1.0
 
     def __post_init__(self) -> None:
@@ -57,6 +65,8 @@ class Model:
             ("inflow", INFLOW_LAWS),
             ("end_loss", END_LOSS_LAWS),
             ("stall_delay", STALL_DELAY_LAWS),
+            ("post_stall", POST_STALL_LAWS),
+            ("reynolds_rule", REYNOLDS_RULES),
         ):
             if getattr(self, name) not in laws:
                 raise InputError(name, f"{getattr(self, name)!r}; one of {', '.join(laws)}")

@@ -7,6 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from bemt.section.post_stall import LAWS, SeparatedSection
+
 FloatArray = NDArray[np.float64]
 
 GRID_SIZE = 721
@@ -18,6 +20,7 @@ _BLEND_WIDTH = np.radians(1.0)
 _KEPT_PAST_STALL = np.radians(4.0)
 _LATEST_STALL = np.radians(25.0)
 _SLOPE_SPAN = np.radians(5.0)
+_MATCHED = np.radians((5.0, 45.0))  # a law is matched between these angles: some have no meaning near 0 and 90 deg
 
 
 @dataclass(frozen=True, eq=False)
@@ -31,7 +34,7 @@ class FullCircle:
     stall_low, stall_high : numpy.ndarray, shape (...)
         Angles of the least and the largest lift of the table [rad].
     data_low, data_high : numpy.ndarray, shape (...)
-        Angles from which on the plate law has at least half the weight, or where the data end [rad].
+        Angles from which on the post-stall law has at least half the weight, or where the data end [rad].
     zero_lift : numpy.ndarray, shape (...)
         Zero-lift angle [rad].
     """
@@ -45,37 +48,6 @@ class FullCircle:
     zero_lift: FloatArray
 
 
-def plate_law(alpha: FloatArray, plate_drag: float, edge_friction: FloatArray | float) -> tuple[FloatArray, FloatArray]:
-    """Lift and drag coefficient of a separated section at any angle.
-
-    Normal force cn = cd90 (0.222 + 0.283)/(0.222 + 0.283/sin alpha), odd in alpha and mirrored about 90 deg; along the
-    chord only friction.
-
-    Parameters
-    ----------
-    alpha : numpy.ndarray, shape (n,)
-        [rad], within -pi to pi.
-    plate_drag : float
-        Drag coefficient at 90 deg; 1.80 was measured for all NACA 00xx sections (R.E. Sheldahl, P.C. Klimas,
-        SAND80-2114, 1981), published values run from 1.56 to 2.08.
-    edge_friction : float or array, shape (..., 1)
-        Drag coefficient of the section edge on.
-
-    Returns
-    -------
-    lift, drag : numpy.ndarray, shape (..., n)
-
-    References
-    ----------
-    S.F. Hoerner, Fluid-Dynamic Drag, 1965, and C. Lindenburg, ECN-C-03-025, 2003 (form of the normal force).
-    """
-    sine, cosine = np.sin(alpha), np.cos(alpha)
-    away = np.abs(sine)
-    normal = plate_drag * (0.222 + 0.283) * sine / (0.222 * away + 0.283)
-    along = edge_friction * cosine
-    return normal * cosine - along * sine, normal * sine + along * cosine
-
-
 def full_circle(
     alpha: FloatArray,
     lift: FloatArray,
@@ -84,12 +56,15 @@ def full_circle(
     plate_drag: float,
     drag_scale: float = 1.0,
     whole_table: bool = False,
+    post_stall: str = "plate",
+    t_over_c: FloatArray | float = 0.12,
 ) -> FullCircle:
-    """Continue tables to the full circle by blending into the plate law beyond stall.
+    """Continue tables to the full circle by blending into a post-stall law.
 
-    Lift and the logarithm of drag pass into the plate law by a logistic of 1 deg width centred 4 deg past the stall;
-    beyond its last angle a table is held while the blend takes over. A table that reaches further is used as far as
-    it goes, if asked; one that spans the whole circle is used alone.
+    Lift and the logarithm of drag pass into the law by a logistic of 1 deg width centred 4 deg past the stall, where
+    laws that are matched to the section are matched; beyond its last angle a table is held while the blend takes
+    over. A table that reaches further is used as far as it goes, if asked; one that spans the whole circle is used
+    alone.
 
     Parameters
     ----------
@@ -103,6 +78,10 @@ def full_circle(
         Factor on the table's drag.
     whole_table : bool
         Use the table to its ends (measured or computed data of the user) rather than 4 deg past stall only.
+    post_stall : str
+        Name of the law, one of `bemt.section.post_stall.LAWS`.
+    t_over_c : float or numpy.ndarray, shape (...)
+        Thickness as a share of the chord; some laws need it.
 
     Returns
     -------
@@ -137,10 +116,20 @@ def full_circle(
         share += _logistic((low[..., None] - ANGLES) / _BLEND_WIDTH)
     share = np.minimum(share, 1.0)
 
-    edge = drag_scale * drag.min(axis=-1, keepdims=True)
-    plate_lift, plate_drag_curve = plate_law(ANGLES, plate_drag, edge)
-    blended_lift = (1 - share) * table_lift + share * plate_lift
-    blended_drag = (1 - share) * table_drag + share * np.log(plate_drag_curve)
+    match_high, match_low = np.clip(high, *_MATCHED), np.clip(low, -_MATCHED[1], -_MATCHED[0])
+    section = SeparatedSection(
+        high_angle=match_high,
+        high_lift=at_angle(table_lift, match_high),
+        high_drag=np.exp(at_angle(table_drag, match_high)),
+        low_angle=match_low,
+        low_lift=at_angle(table_lift, match_low),
+        low_drag=np.exp(at_angle(table_drag, match_low)),
+        edge_drag=drag_scale * drag.min(axis=-1),
+        t_over_c=np.asarray(t_over_c, dtype=np.float64),
+    )
+    law_lift, law_drag = LAWS[post_stall].function(ANGLES, plate_drag, section)
+    blended_lift = (1 - share) * table_lift + share * law_lift
+    blended_drag = (1 - share) * table_drag + share * np.log(law_drag)
     # Both ends of the circle are one angle.
     for curve in (blended_lift, blended_drag):
         curve[..., 0] = curve[..., -1] = 0.5 * (curve[..., 0] + curve[..., -1])
@@ -167,13 +156,30 @@ def lift_slope(curves: FullCircle) -> FloatArray:
     numpy.ndarray, shape (...)
         [1/rad], from the secant over 5 deg.
     """
-    position = (curves.zero_lift + _SLOPE_SPAN + np.pi) / (ANGLES[1] - ANGLES[0])
+    slope: FloatArray = np.clip(at_angle(curves.lift, curves.zero_lift + _SLOPE_SPAN) / _SLOPE_SPAN, 0.0, 2 * np.pi)
+    return slope
+
+
+def at_angle(curves: FloatArray, angle: FloatArray) -> FloatArray:
+    """Read curves over `ANGLES` at one angle each, by straight lines.
+
+    Parameters
+    ----------
+    curves : numpy.ndarray, shape (..., GRID_SIZE)
+    angle : numpy.ndarray, shape (...)
+        [rad], within -pi to pi.
+
+    Returns
+    -------
+    numpy.ndarray, shape (...)
+    """
+    position = (angle + np.pi) / (ANGLES[1] - ANGLES[0])
     cell = np.clip(position.astype(int), 0, GRID_SIZE - 2)
     t = position - cell
-    here = np.take_along_axis(curves.lift, cell[..., None], -1)[..., 0]
-    there = np.take_along_axis(curves.lift, cell[..., None] + 1, -1)[..., 0]
-    slope: FloatArray = np.clip((here * (1 - t) + there * t) / _SLOPE_SPAN, 0.0, 2 * np.pi)
-    return slope
+    here = np.take_along_axis(curves, cell[..., None], -1)[..., 0]
+    there = np.take_along_axis(curves, cell[..., None] + 1, -1)[..., 0]
+    value: FloatArray = here * (1 - t) + there * t
+    return value
 
 
 def _logistic(x: FloatArray) -> FloatArray:

@@ -1,4 +1,4 @@
-"""Tabulated section data: lift, drag and moment coefficients over angle of attack and Reynolds number."""
+"""Tabulated section data: lift, drag and moment coefficients over angle of attack, Reynolds and Mach number."""
 
 from __future__ import annotations
 
@@ -25,14 +25,14 @@ class PolarTable:
         Angle of attack of the chord line [rad], ascending.
     reynolds : numpy.ndarray, shape (n_re,)
         Reynolds numbers of the chord, ascending; at least two.
-    lift, drag : numpy.ndarray, shape (n_re, n_alpha)
+    lift, drag : numpy.ndarray, shape (n_re, n_alpha), or (n_mach, n_re, n_alpha)
         Section coefficients.
     source : str
         Where the data come from, in words.
-    moment : numpy.ndarray, shape (n_re, n_alpha), optional
+    moment : numpy.ndarray, shape of `lift`, optional
         Moment coefficient about the quarter chord, nose up positive.
-    mach : float
-        Mach number at which the data hold.
+    mach : float or numpy.ndarray, shape (n_mach,)
+        Mach number at which the data hold; or several, ascending, at least two.
     reynolds_trusted_from : float
         Rows below this Reynolds number are extrapolated.
     t_over_c : float, optional
@@ -41,8 +41,9 @@ class PolarTable:
     Raises
     ------
     InputError
-        If the arrays do not fit, are not finite or not ascending, if a drag is not positive, if there are fewer than
-        two Reynolds numbers, or if the angles do not reach from `NARROWEST_ALPHA_DEG[0]` to `NARROWEST_ALPHA_DEG[1]`.
+        If the arrays do not fit, are not finite or not ascending, if a drag is not positive, if a Mach number does not
+        lie between 0 and 1, if there are fewer than two Reynolds numbers, or if the angles do not reach from
+        `NARROWEST_ALPHA_DEG[0]` to `NARROWEST_ALPHA_DEG[1]`.
     """
 
     alpha: FloatArray
@@ -51,7 +52,7 @@ class PolarTable:
     drag: FloatArray
     source: str
     moment: FloatArray | None = None
-    mach: float = 0.0
+    mach: float | FloatArray = 0.0
     reynolds_trusted_from: float = 0.0
     t_over_c: float | None = None
 
@@ -78,12 +79,22 @@ class PolarTable:
                 f"angles reach from {low:g} to {high:g} deg; they must reach at least from "
                 f"{NARROWEST_ALPHA_DEG[0]:g} to {NARROWEST_ALPHA_DEG[1]:g} deg, past the stall",
             )
-        shape = (self.reynolds.size, self.alpha.size)
+        mach = np.asarray(self.mach, dtype=np.float64)
+        if not ((mach >= 0.0) & (mach < 1.0)).all():
+            raise InputError("mach", f"{self.mach}; the Mach numbers of a polar lie between 0 and 1")
+        if mach.ndim > 0 and (mach.ndim > 1 or mach.size < 2 or (np.diff(mach) <= 0.0).any()):
+            raise InputError("mach", "an axis of Mach numbers has at least two, ascending")
+        object.__setattr__(self, "mach", float(mach) if mach.ndim == 0 else mach)
+        shape = (*mach.shape, self.reynolds.size, self.alpha.size)
         for name in ("lift", "drag", "moment"):
             value = getattr(self, name)
             if value is not None and value.shape != shape:
-                raise InputError(name, f"shape {value.shape} does not fit Reynolds numbers by angles {shape}")
+                axes = "Mach numbers by Reynolds numbers by angles" if mach.ndim else "Reynolds numbers by angles"
+                raise InputError(name, f"shape {value.shape} does not fit {axes} {shape}")
         if (self.drag <= 0).any():
             raise InputError("drag", f"smallest drag coefficient is {self.drag.min():g}; drag must be positive")
-        if not 0.0 <= self.mach < 1.0:
-            raise InputError("mach", f"{self.mach:g}; a polar's own Mach number lies between 0 and 1")
+
+    @property
+    def mach_numbers(self) -> FloatArray:
+        """Mach numbers of the data, shape (n_mach,); one where the table has no axis of them."""
+        return np.atleast_1d(np.asarray(self.mach, dtype=np.float64))
