@@ -167,7 +167,8 @@ class Ours:
         columns[:, k.E_CHORD] = work.chord
         columns[:, k.E_SOLIDITY] = work.blades * work.chord / (2.0 * np.pi * work.radius)
         half = 0.5 * work.blades / work.radius
-        columns[:, k.E_TIP] = np.sqrt(half * (work.tip_radius - work.radius))
+        columns[:, k.E_MACH_HIGH] = np.inf
+        columns[:, k.E_TIP] = columns[:, k.E_LOSS_SCALE] = np.sqrt(half * (work.tip_radius - work.radius))
         columns[:, k.E_ROOT] = np.sqrt(half * (work.radius - work.root_radius))
         columns[:, k.E_DIVERGENCE] = 0.75
         columns[:, k.E_TABLE_BETA] = 1.0

@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
+
 import numpy as np
 from numpy.typing import NDArray
 
 from bemt.rotor import kernels as k
 from bemt.rotor.elements import BladeElements, element_bounds
 from bemt.rotor.solution import solve as rotor_solve
-from bemt.section.full_circle import ANGLES, plate_law
+from bemt.section.full_circle import ANGLES
+from bemt.section.post_stall import plate_law
 
 FloatArray = NDArray[np.float64]
 
@@ -55,7 +58,8 @@ def elements(rng: np.random.Generator, count: int, blades: int, n_polars: int) -
     columns[:, k.E_CHORD] = chord * TIP_RADIUS
     columns[:, k.E_TWIST] = np.radians(rng.uniform(-20, 75, count))
     columns[:, k.E_SOLIDITY] = blades * chord / (2 * np.pi * x)
-    columns[:, k.E_TIP] = np.sqrt(0.5 * blades * (1 - x) / x)
+    columns[:, k.E_TIP] = columns[:, k.E_LOSS_SCALE] = np.sqrt(0.5 * blades * (1 - x) / x)
+    columns[:, k.E_MACH_HIGH] = np.inf
     columns[:, k.E_ROOT] = np.sqrt(0.5 * blades * (x - ROOT) / ROOT)
     columns[:, k.E_DIVERGENCE] = 0.75
     columns[:, k.E_TABLE_BETA] = 1.0
@@ -90,3 +94,30 @@ def solve(
         )
     assert solution.radial is not None
     return dict(solution.radial)
+
+
+def closure(
+    points: FloatArray, columns: FloatArray, radial: Mapping[str, FloatArray]
+) -> tuple[FloatArray, NDArray[np.bool_]]:
+    """Disagreement of blade-element and momentum forces as a share of the section force, and where Buhl's law rules.
+
+    Shapes (n_points, n_elements).
+    """
+    airspeed = points[:, None, k.P_AIRSPEED]
+    turning = points[:, None, k.P_OMEGA] * columns[None, :, k.E_RADIUS]
+    phi, speed, loss = radial["inflow_angle"], radial["speed"], radial["end_loss"]
+    lift, drag = radial["section_lift_coefficient"], radial["section_drag_coefficient"]
+    w, v = speed * np.sin(phi) - airspeed, turning - speed * np.cos(phi)
+    # dT/dr and dQ/dr/r, both over 4 pi rho r: momentum of the annulus against the blade elements.
+    half = 0.5 * columns[None, :, k.E_SOLIDITY] * speed**2
+    thrust = half * (lift * np.cos(phi) - drag * np.sin(phi))
+    torque = half * (lift * np.sin(phi) + drag * np.cos(phi))
+    flow = np.abs(airspeed + w)
+    momentum_thrust, momentum_torque = 2 * loss * w * flow, 2 * loss * v * flow
+    # Buhl 2005, NREL/TP-500-36834: CT = 8/9 + (4F - 40/9) a + (50/9 - 4F) a^2 above a = 0.4.
+    brake = np.isfinite(radial["high_induction"])
+    a = -w / np.where(airspeed > 0, airspeed, 1.0)
+    buhl = -0.5 * airspeed**2 * (8 / 9 + (4 * loss - 40 / 9) * a + (50 / 9 - 4 * loss) * a**2)
+    momentum_thrust = np.where(brake, buhl, momentum_thrust)
+    error = np.maximum(np.abs(thrust - momentum_thrust), np.abs(torque - momentum_torque))
+    return error / (half * (np.abs(lift) + drag)), brake

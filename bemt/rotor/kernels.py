@@ -59,7 +59,7 @@ E_WIDTH = 1  # dr [m]
 E_CHORD = 2  # c [m]
 E_TWIST = 3  # chord line from the plane of rotation [rad]
 E_SOLIDITY = 4  # B c / (2 pi r)
-E_TIP = 5  # sqrt of (B/2)(R - r)/r, large where there is no loss
+E_TIP = 5  # sqrt of (B/2)(R - r)/r, large where there is no loss: starting values come from it
 E_ROOT = 6  # sqrt of (B/2)(r - r_root)/r_root, large where there is no loss
 E_DIVERGENCE = 7  # Korn's kappa less thickness: drag-divergence Mach number at no lift
 E_TABLE_BETA = 8  # sqrt(1 - M^2) at the Mach number of the polar itself
@@ -67,7 +67,11 @@ E_LN_RE_LOW = 9  # trusted range of ln Re
 E_LN_RE_HIGH = 10
 E_OUTSIDE = 11  # 1 where thickness or camber leave the section data
 E_POLAR = 12  # index of the element's polar
-E_COLUMNS = 13
+E_LOSS = 13  # index of the element's table of the loss at the tip
+E_LOSS_SCALE = 14  # the argument of that table is this over sqrt|sin phi|; E_TIP for Prandtl's law
+E_MACH_LOW = 15  # trusted range of the Mach number
+E_MACH_HIGH = 16
+E_COLUMNS = 17
 
 # Columns of the bounds array, per polar and Reynolds number [rad].
 B_RISE_LOW = 0  # lift rises at least as fast as drag changes between these angles
@@ -110,14 +114,18 @@ S_TORQUE = 8  # [m5/s2]
 S_STALLED = 9  # 1 where beyond the stall, outside the data, below Re 60 000
 S_OUTSIDE = 10
 S_LOW_RE = 11
-S_EVALUATIONS = 12
-S_LOW = 13  # bracket of a root that has not been reached
-S_HIGH = 14
-S_ROWS = 15
+S_DIVERGED = 12  # 1 above the drag-divergence Mach number
+S_EVALUATIONS = 13
+S_LOW = 14  # bracket of a root that has not been reached
+S_HIGH = 15
+S_ROWS = 16
 
 _RESIDUAL_TOLERANCE = 1e-11  # of the sum of the residual's terms
 _SPEED_TOLERANCE = 1e-5  # of W: Reynolds and Mach number lag by no more, worth 1e-6 of the forces
+LOSS_CELLS = 512  # of each table of the loss at an end
 _LOSS_FLOOR = 1e-4
+CRITICAL_BELOW_DIVERGENCE = 0.10772173450159418  # (0.1/80)^(1/3): Lock's critical below the drag-divergence Mach number
+LOWEST_DIVERGENCE = 0.3
 _FADE_START = math.radians(30.0)
 _FADE_END = math.radians(50.0)
 _LN_60000 = math.log(60000.0)
@@ -166,18 +174,19 @@ def _sine_cosine(x):
 
 
 @_jit
-def _end_loss(k, inverse_root_sine, loss):
-    """Prandtl's factor of one end and its slope d ln P / d ln |sin phi|.
+def _end_loss(k, inverse_root_sine, table, loss):
+    """Loss factor of one end and its slope d ln P / d ln |sin phi|.
 
-    P(x) = (2/pi) acos(exp(-x^2)) with x = k / sqrt|sin phi| comes from a table of cubics over uniform cells; the table
-    ends where P is 1 to rounding.
+    P over x = k / sqrt|sin phi| comes from a table of cubics over uniform cells, the first of which is Prandtl's
+    P(x) = (2/pi) acos(exp(-x^2)); tables end where P is 1 to rounding.
     """
     x = k * inverse_root_sine
     position = x * loss[0, 4]
-    if position >= loss.shape[0]:
+    if position >= LOSS_CELLS:
         return 1.0, 0.0
     cell = int(position)
     t = position - cell
+    cell += int(table) * LOSS_CELLS
     c1 = loss[cell, 1]
     c2 = loss[cell, 2]
     c3 = loss[cell, 3]
@@ -187,12 +196,12 @@ def _end_loss(k, inverse_root_sine, loss):
 
 
 @_jit
-def _loss_factor(absolute_sine, k_tip, k_root, loss):
+def _loss_factor(absolute_sine, k_tip, table, k_root, loss):
     """F of both ends with a floor, and d ln F / d ln |sin phi|."""
     s = max(absolute_sine, 1e-15)
     inverse_root = 1.0 / math.sqrt(s)
-    tip, tip_slope = _end_loss(k_tip, inverse_root, loss)
-    root, root_slope = _end_loss(k_root, inverse_root, loss)
+    tip, tip_slope = _end_loss(k_tip, inverse_root, table, loss)
+    root, root_slope = _end_loss(k_root, inverse_root, 0.0, loss)
     factor = tip * root
     if factor < _LOSS_FLOOR:
         return _LOSS_FLOOR, 0.0
@@ -258,10 +267,10 @@ def _compressibility(mach, lift, element):
     The Mach number is held at drag divergence (Korn: kappa - t/c - |cl|/10) for the lift; the drag rise
     20 (M - Mcr)^4 starts at Mcr = Mdd - (0.1/80)^(1/3) (Lock).
     """
-    divergence = max(element[E_DIVERGENCE] - 0.1 * min(abs(lift), 2.0), 0.3)
+    divergence = max(element[E_DIVERGENCE] - 0.1 * min(abs(lift), 2.0), LOWEST_DIVERGENCE)
     held = min(mach, divergence)
     pg = max(element[E_TABLE_BETA] / math.sqrt(1.0 - held * held), 1.0)
-    above = mach - (divergence - 0.10772173450159418)
+    above = mach - (divergence - CRITICAL_BELOW_DIVERGENCE)
     rise = 20.0 * above * above * above * above if above > 0.0 else 0.0
     return pg, min(rise, 0.5)
 
@@ -276,7 +285,7 @@ def _residual(psi, alpha_0, s0, c0, element, polar, row, weight, pg, rise, loss)
     sine, cosine = _sine_cosine(psi)
     s = s0 * cosine + c0 * sine
     c = c0 * cosine - s0 * sine
-    factor, loss_slope = _loss_factor(abs(s), element[E_TIP], element[E_ROOT], loss)
+    factor, loss_slope = _loss_factor(abs(s), element[E_LOSS_SCALE], element[E_LOSS], element[E_ROOT], loss)
     lift, drag, lift_slope, drag_slope = _section(alpha_0 - psi, polar, row, weight, pg)
     drag += rise
     sigma = element[E_SOLIDITY]
@@ -437,13 +446,13 @@ def _dead_beyond(psi, end, alpha_0, s0, c0, sigma, pg, x4_end, peak, peak_from, 
 
 
 @_jit
-def _too_small(angle, s0, c0, sigma, peak, k_tip, k_root, loss):
+def _too_small(angle, s0, c0, sigma, peak, k_tip, table, k_root, loss):
     """Whether even the largest lift cannot hold h up from a value of psi on."""
     if angle > 0.78:
         return False
     sine, cosine = _sine_cosine(angle)
     s = s0 * cosine + c0 * sine
-    factor, _ = _loss_factor(s, k_tip, k_root, loss)
+    factor, _ = _loss_factor(s, k_tip, table, k_root, loss)
     return sine * 4.0 * factor * s > cosine * sigma * peak
 
 
@@ -512,11 +521,11 @@ def _first_and_alone(
         # sin(phi0 + 0.8 psi) >= 0.8 sin(phi0 + psi) and tan psi < 0.5: h falls on to the root, and from it to `calm`.
         peak = pg * _bound(bounds, row, B_PEAK_LIFT, True)
         return 1 if _too_small(
-            alpha_0 - calm, s0, c0, sigma, peak, element[E_TIP], element[E_ROOT], loss
+            alpha_0 - calm, s0, c0, sigma, peak, element[E_LOSS_SCALE], element[E_LOSS], element[E_ROOT], loss
         ) else last, psi
     sine, cosine = _sine_cosine(reach)
     near = s0 * cosine + c0 * sine
-    factor, _ = _loss_factor(near, element[E_TIP], element[E_ROOT], loss)
+    factor, _ = _loss_factor(near, element[E_LOSS_SCALE], element[E_LOSS], element[E_ROOT], loss)
     if _falls_between(alpha_0, reach, psi, tangent, 4.0 * factor * near / sigma - gain, polar, row, weight, pg):
         return last, psi
     return 0, reach
@@ -618,7 +627,7 @@ def _another_beyond(side, windmill, psi, alpha_0, phi_0, s0, c0, element, polar,
         if propeller and phi_0 + here < 0.5 * math.pi and here < 0.25 * math.pi:
             sine, cosine = _sine_cosine(here)
             s = s0 * cosine + c0 * sine
-            factor, _ = _loss_factor(s, element[E_TIP], element[E_ROOT], loss)
+            factor, _ = _loss_factor(s, element[E_LOSS_SCALE], element[E_LOSS], element[E_ROOT], loss)
             x = 4.0 * factor * s / sigma
             if x >= fall or alpha_0 - here <= rise_high:
                 return False, evaluations
@@ -731,7 +740,7 @@ def _branch(alpha_0, s0, c0, element, polar, row, weight, pg, rise, loss):
     lift, drag, _, _ = _section(alpha_0, polar, row, weight, pg)
     sigma = element[E_SOLIDITY]
     if s0 > 0.0:
-        factor, _ = _loss_factor(s0, element[E_TIP], element[E_ROOT], loss)
+        factor, _ = _loss_factor(s0, element[E_LOSS_SCALE], element[E_LOSS], element[E_ROOT], loss)
         if sigma * ((drag + rise) * s0 - lift * c0) > 2.0 / 3.0 * 4.0 * factor * s0 * s0:
             value = _windmill_residual(0.0, alpha_0, s0, c0, element, polar, row, weight, pg, rise, loss)[0]
             if value > 0.0:
@@ -761,8 +770,8 @@ def solve_element(airspeed, turning, element, inverse_viscosity, inverse_sound, 
         Lift and ln drag over a uniform grid of angles from -pi to pi.
     bounds : array (n_re, B_COLUMNS)
     ln_reynolds : array (n_re,)
-    loss : array (n, 5)
-        Table of Prandtl's factor.
+    loss : array (n_tables LOSS_CELLS, 5)
+        Tables of the loss at an end, Prandtl's first.
 
     Returns
     -------
@@ -854,6 +863,8 @@ LANES = 64
     _W_MACH_0,
     _W_SIGMA,
     _W_TIP,
+    _W_LOSS_SCALE,
+    _W_LOSS,
     _W_ROOT,
     _W_DIVERGENCE,
     _W_BETA,
@@ -917,11 +928,14 @@ LANES = 64
     _W_STALLED,
     _W_OUTSIDE,
     _W_LOW_RE,
+    _W_MACH_LOW,
+    _W_MACH_HIGH,
+    _W_DIVERGED,
     _W_THRUST,
     _W_TORQUE,
     _W_RISE_HIGH,
     _W_END,
-) = range(0, 75 * LANES, LANES)
+) = range(0, 80 * LANES, LANES)
 
 
 @_jit
@@ -1031,7 +1045,7 @@ def _lanes_flow(n, w, loss_scale, angle_scale, last):
         w[_W_S + i] = s
         w[_W_C + i] = c0 * cosine - s0 * sine
         inverse_root = loss_scale / math.sqrt(max(abs(s), 1e-15))
-        w[_W_TIP_X + i] = w[_W_TIP + i] * inverse_root
+        w[_W_TIP_X + i] = w[_W_LOSS_SCALE + i] * inverse_root
         w[_W_ROOT_X + i] = w[_W_ROOT + i] * inverse_root
         place = (w[_W_ALPHA_0 + i] - x + math.pi) * angle_scale
         w[_W_PLACE + i] = place + last if place < 0.0 else place
@@ -1052,10 +1066,10 @@ def _lanes_flow(n, w, loss_scale, angle_scale, last):
         w[_W_LN_RE + i] = ln_re
         w[_W_WEIGHT + i] = (ln_re - w[_W_LN_RE_ROW + i]) * w[_W_PER_LN_RE + i]
         mach = w[_W_MACH_0 + i] * speed
-        divergence = max(w[_W_DIVERGENCE + i] - 0.1 * min(abs(w[_W_LIFT + i]), 2.0), 0.3)
+        divergence = max(w[_W_DIVERGENCE + i] - 0.1 * min(abs(w[_W_LIFT + i]), 2.0), LOWEST_DIVERGENCE)
         held = min(mach, divergence)
         w[_W_PG + i] = max(w[_W_BETA + i] / math.sqrt(1.0 - held * held), 1.0)
-        above = max(mach - (divergence - 0.10772173450159418), 0.0)
+        above = max(mach - (divergence - CRITICAL_BELOW_DIVERGENCE), 0.0)
         square = above * above
         w[_W_RISE + i] = min(20.0 * square * square, 0.5)
 
@@ -1066,7 +1080,7 @@ def _lanes_look_up(n, w, index, polars, ln_reynolds, loss):
     n_alpha = polars.shape[2]
     flat = polars.reshape(-1)
     cells = loss.reshape(-1)
-    end = float(loss.shape[0])
+    end = float(LOSS_CELLS)
     last_cell = float(n_alpha - 2)
     one, two, three, five = np.uint64(1), np.uint64(2), np.uint64(3), np.uint64(5)
     to_next_row = np.uint64(2 * n_alpha)
@@ -1076,7 +1090,7 @@ def _lanes_look_up(n, w, index, polars, ln_reynolds, loss):
         if place < end:
             cell = np.int64(place)
             t = place - cell
-            at = five * np.uint64(cell)
+            at = five * np.uint64(cell + LOSS_CELLS * np.int64(w[_W_LOSS + i]))
             c1, c2, c3 = cells[at + one], cells[at + two], cells[at + three]
             value = cells[at] + t * (c1 + t * (c2 + t * c3))
             step = c1 + t * (2.0 * c2 + t * 3.0 * c3)
@@ -1403,6 +1417,11 @@ def _lanes_finish(n, w, index, bounds):
         outside = outside or ln_re < w[_W_LN_RE_LOW + i] or ln_re > w[_W_LN_RE_HIGH + i]
         w[_W_OUTSIDE + i] = 1.0 if outside else 0.0
         w[_W_LOW_RE + i] = 1.0 if ln_re < _LN_60000 else 0.0
+        mach = w[_W_MACH_0 + i] * ratio
+        divergence = max(w[_W_DIVERGENCE + i] - 0.1 * min(abs(lift), 2.0), LOWEST_DIVERGENCE)
+        w[_W_DIVERGED + i] = 1.0 if mach > divergence else 0.0
+        if mach < w[_W_MACH_LOW + i] or mach > w[_W_MACH_HIGH + i]:
+            w[_W_OUTSIDE + i] = 1.0
 
 
 @_jit
@@ -1433,7 +1452,7 @@ def _lanes_stalled(n, w, index, polars, bounds, loss):
             # From there on lift must stay too small for another root, until it rises or X outweighs its fall.
             sine, cosine = _sine_cosine(reach)
             s_end = w[_W_S0 + i] * cosine + w[_W_C0 + i] * sine
-            factor, _ = _loss_factor(s_end, w[_W_TIP + i], w[_W_ROOT + i], loss)
+            factor, _ = _loss_factor(s_end, w[_W_LOSS_SCALE + i], w[_W_LOSS + i], w[_W_ROOT + i], loss)
             if reach > 0.78 or not _dead_beyond(
                 angle,
                 reach,
@@ -1486,6 +1505,8 @@ def _lanes_load(n, w, index, points, elements, ln_chord, tip_square, ln_re_per_c
         w[_W_MACH_0 + i] = points[p, P_INVERSE_SOUND]
         w[_W_SIGMA + i] = elements[e, E_SOLIDITY]
         w[_W_TIP + i] = elements[e, E_TIP]
+        w[_W_LOSS_SCALE + i] = elements[e, E_LOSS_SCALE]
+        w[_W_LOSS + i] = elements[e, E_LOSS]
         w[_W_ROOT + i] = elements[e, E_ROOT]
         w[_W_DIVERGENCE + i] = elements[e, E_DIVERGENCE]
         w[_W_BETA + i] = elements[e, E_TABLE_BETA]
@@ -1493,6 +1514,8 @@ def _lanes_load(n, w, index, points, elements, ln_chord, tip_square, ln_re_per_c
         w[_W_STRIP + i] = blades * elements[e, E_CHORD] * elements[e, E_WIDTH]
         w[_W_LN_RE_LOW + i] = elements[e, E_LN_RE_LOW]
         w[_W_LN_RE_HIGH + i] = elements[e, E_LN_RE_HIGH]
+        w[_W_MACH_LOW + i] = elements[e, E_MACH_LOW]
+        w[_W_MACH_HIGH + i] = elements[e, E_MACH_HIGH]
         index[i] = int(elements[e, E_POLAR])
 
 
@@ -1514,6 +1537,7 @@ def _lanes_store(count, w, index, n_elements, rounds, state):
         state[S_STALLED, pair] = w[_W_STALLED + i]
         state[S_OUTSIDE, pair] = w[_W_OUTSIDE + i]
         state[S_LOW_RE, pair] = w[_W_LOW_RE + i]
+        state[S_DIVERGED, pair] = w[_W_DIVERGED + i]
         state[S_EVALUATIONS, pair] = rounds
         state[S_LOW, pair] = w[_W_LOW + i]
         state[S_HIGH, pair] = w[_W_HIGH + i]
@@ -1533,7 +1557,7 @@ def solve_lanes(points, elements, polars, bounds, ln_reynolds, loss, blades, sta
     polars : array (n_polars, n_re, n_alpha, 2)
     bounds : array (n_polars, n_re, B_COLUMNS)
     ln_reynolds : array (n_re,)
-    loss : array (n, 5)
+    loss : array (n_tables LOSS_CELLS, 5)
     blades : int
     state : array (S_ROWS, n_points * n_elements)
         Written; the elements of a point stand together. Status 1 where done, else for `prove_roots`.
@@ -1646,7 +1670,8 @@ def _inflow(point, element):
 @_jit
 def _write(state, pair, point, element, bound, ln_reynolds, blades, psi, ratio, lift, drag, x4, induction, status):
     """Put the root of an element in its place, with its forces and where it stands among the data."""
-    airspeed, turning, s0, c0, _, alpha_0, ln_re_0, _ = _inflow(point, element)
+    airspeed, turning, s0, c0, _, alpha_0, ln_re_0, mach_0 = _inflow(point, element)
+    mach = mach_0 * ratio
     sine, cosine = math.sin(psi), math.cos(psi)
     s = s0 * cosine + c0 * sine
     c = c0 * cosine - s0 * sine
@@ -1667,6 +1692,8 @@ def _write(state, pair, point, element, bound, ln_reynolds, blades, psi, ratio, 
         or alpha < rest * bound[row, B_DATA_LOW] + weight * bound[row + 1, B_DATA_LOW]
         or ln_re < element[E_LN_RE_LOW]
         or ln_re > element[E_LN_RE_HIGH]
+        or mach < element[E_MACH_LOW]
+        or mach > element[E_MACH_HIGH]
     )
     state[S_PSI, pair] = psi
     state[S_SPEED, pair] = ratio
@@ -1680,6 +1707,8 @@ def _write(state, pair, point, element, bound, ln_reynolds, blades, psi, ratio, 
     state[S_STALLED, pair] = 1.0 if stalled else 0.0
     state[S_OUTSIDE, pair] = 1.0 if outside else 0.0
     state[S_LOW_RE, pair] = 1.0 if ln_re < _LN_60000 else 0.0
+    divergence = max(element[E_DIVERGENCE] - 0.1 * min(abs(lift), 2.0), LOWEST_DIVERGENCE)
+    state[S_DIVERGED, pair] = 1.0 if mach > divergence else 0.0
 
 
 @_jit
@@ -1851,6 +1880,103 @@ def search_roots(points, elements, polars, bounds, ln_reynolds, loss, blades, st
         )
 
 
+@_jit
+def _blend_mach(share, below, above, first, rows, polar, bounds, into, bounds_into):
+    """Blend the rows of two Mach numbers, lift and ln drag linearly; bounds so that they hold for every blend."""
+    for row in range(rows):
+        low, high = below + first + row, above + first + row
+        for cell in range(polar.shape[1]):
+            for part in range(2):
+                left = polar[low, cell, part]
+                into[row, cell, part] = left + share * (polar[high, cell, part] - left)
+        for column in range(B_COLUMNS):
+            left, right = bounds[low, column], bounds[high, column]
+            if B_STALL_LOW <= column <= B_DATA_HIGH or column in (B_PEAK_AT, B_RISE_LIFT):
+                value = left + share * (right - left)
+            elif column in (B_RISE_HIGH, B_TROUGH_FROM, B_TROUGH_LIFT):
+                value = min(left, right)
+            else:
+                value = max(left, right)
+            bounds_into[row, column] = value
+
+
+@_jit
+def search_at_mach(points, elements, polars, bounds, ln_reynolds, mach, loss, blades, state, blend, bounds_blend, bare):
+    """Find the roots of a blade whose polars have a Mach axis, each by walking outward at its own Mach number.
+
+    Compressibility is in the polars, so no law of it is applied. The Mach number of the blend follows the local speed
+    from pass to pass.
+
+    Parameters
+    ----------
+    points, elements, loss, blades, state
+        As for `solve_lanes`.
+    polars : array (n_polars, n_mach n_re, n_alpha, 2)
+    bounds : array (n_polars, n_mach n_re, B_COLUMNS)
+    ln_reynolds : array (n_re,)
+    mach : array (n_mach,)
+    blend : array (4, n_alpha, 2)
+    bounds_blend : array (4, B_COLUMNS)
+    bare : array (E_COLUMNS,)
+        Working space, whatever it holds.
+    """
+    n_elements = elements.shape[0]
+    n_re = ln_reynolds.shape[0]
+    rows = min(n_re, 4)
+    for pair in range(state.shape[1]):
+        p = pair // n_elements
+        e = pair - p * n_elements
+        element = elements[e]
+        at = int(element[E_POLAR])
+        airspeed, turning, _, _, _, _, ln_re_0, mach_0 = _inflow(points[p], element)
+        for column in range(E_COLUMNS):
+            bare[column] = element[column]
+        bare[E_TABLE_BETA] = 0.0
+        bare[E_DIVERGENCE] = 10.0
+        state[S_EVALUATIONS, pair] = 0.0
+        guess = 1.0
+        first = -1
+        psi, speed, lift, drag, x4, induction, status = 0.0, 1.0, 0.0, 0.0, 1.0, math.nan, 4
+        for _ in range(12):
+            row, _ = _row(ln_re_0 + math.log(guess), ln_reynolds, np.int64(0))
+            first = max(min(row - 1, n_re - rows), 0)
+            cell, share = _row(mach_0 * guess, mach, np.int64(0))
+            _blend_mach(share, cell * n_re, (cell + 1) * n_re, first, rows, polars[at], bounds[at], blend, bounds_blend)
+            psi, speed, lift, drag, x4, induction, status, evaluations = solve_element(
+                airspeed,
+                turning,
+                bare,
+                points[p, P_INVERSE_VISCOSITY],
+                points[p, P_INVERSE_SOUND],
+                blend[:rows],
+                bounds_blend[:rows],
+                ln_reynolds[first : first + rows],
+                loss,
+            )
+            state[S_EVALUATIONS, pair] += evaluations
+            if status == 4 or abs(speed - guess) <= _SPEED_TOLERANCE * speed:
+                break
+            guess = speed
+        if abs(speed - guess) > 0.02 * speed:  # passes jump between roots
+            status = 4
+        _write(
+            state,
+            pair,
+            points[p],
+            element,
+            bounds_blend[:rows],
+            ln_reynolds[first : first + rows],
+            blades,
+            psi,
+            speed,
+            lift,
+            drag,
+            x4,
+            induction,
+            status,
+        )
+
+
 def scratch_size(n_points: int, n_elements: int) -> int:
     """Length of the working space of `solve_lanes`.
 
@@ -1879,13 +2005,13 @@ def index_size(n_points: int, n_elements: int) -> int:
     return 4 * LANES + n_points * n_elements
 
 
-def loss_table(cells: int = 512, end: float = 5.2) -> np.ndarray:
+def loss_table(cells: int = LOSS_CELLS, end: float = 5.2) -> np.ndarray:
     """Tabulate Prandtl's end-loss factor P(x) = (2/pi) acos(exp(-x^2)) as cubics.
 
     Parameters
     ----------
     cells : int
-        Uniform cells from 0 to `end`.
+        Uniform cells from 0 to `end`; the solver wants `LOSS_CELLS`.
     end : float
         Where P is taken as 1; exp(-end^2) is below 2e-12.
 

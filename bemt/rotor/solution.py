@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Mapping
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
-from functools import lru_cache
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -44,7 +43,7 @@ class RotorSolution:
         T/rho [m4/s2]; NaN where an element did not converge.
     torque_per_density : numpy.ndarray, shape (n,)
         Q/rho [m5/s2].
-    stalled_share, outside_polar_share, low_reynolds_share : numpy.ndarray, shape (n,)
+    stalled_share, outside_polar_share, low_reynolds_share, above_divergence_share : numpy.ndarray, shape (n,)
         Shares of the span weighted by r^2 chord.
     status : numpy.ndarray of int16, shape (n,)
         Worst status of the elements.
@@ -58,13 +57,9 @@ class RotorSolution:
     stalled_share: FloatArray
     outside_polar_share: FloatArray
     low_reynolds_share: FloatArray
+    above_divergence_share: FloatArray
     status: NDArray[np.int16]
     radial: Mapping[str, FloatArray] | None = None
-
-
-@lru_cache(maxsize=1)
-def _loss_table() -> FloatArray:
-    return k.loss_table()
 
 
 def solve(
@@ -129,6 +124,7 @@ def solve(
             "stalled_share",
             "outside_polar_share",
             "low_reynolds_share",
+            "above_divergence_share",
             "status",
         )
     }
@@ -140,16 +136,15 @@ def solve(
 
 def _add_up(points: FloatArray, elements: BladeElements, radial: bool) -> RotorSolution:
     state = solve_pairs(points, elements)
-    columns = elements.columns
-    weight = columns[:, k.E_RADIUS] ** 2 * columns[:, k.E_CHORD] * columns[:, k.E_WIDTH]
-    weight = weight / weight.sum()
-    outside = np.maximum(state[k.S_OUTSIDE], columns[:, k.E_OUTSIDE])
+    weight = elements.span_weight
+    outside = np.maximum(state[k.S_OUTSIDE], elements.columns[:, k.E_OUTSIDE])
     return RotorSolution(
         thrust_per_density=state[k.S_THRUST].sum(axis=-1),
         torque_per_density=state[k.S_TORQUE].sum(axis=-1),
         stalled_share=state[k.S_STALLED] @ weight,
         outside_polar_share=outside @ weight,
         low_reynolds_share=state[k.S_LOW_RE] @ weight,
+        above_divergence_share=state[k.S_DIVERGED] @ weight,
         status=state[k.S_STATUS].max(axis=-1).astype(np.int16),
         radial=_radial(points, elements, state) if radial else None,
     )
@@ -170,16 +165,20 @@ def solve_pairs(points: FloatArray, elements: BladeElements) -> FloatArray:
     """
     n_points, n_elements = points.shape[0], elements.columns.shape[0]
     state = np.empty((k.S_ROWS, n_points * n_elements))
-    common = (
-        points,
-        elements.columns,
-        elements.polars,
-        elements.bounds,
-        elements.ln_reynolds,
-        _loss_table(),
-        elements.blades,
-        state,
-    )
+    blade = (points, elements.columns, elements.polars, elements.bounds, elements.ln_reynolds)
+    if elements.mach.size > 1:
+        k.search_at_mach(
+            *blade,
+            elements.mach,
+            elements.loss,
+            elements.blades,
+            state,
+            np.empty((4, *elements.polars.shape[2:])),
+            np.empty((4, k.B_COLUMNS)),
+            np.empty(k.E_COLUMNS),
+        )
+        return state.reshape(k.S_ROWS, n_points, n_elements)
+    common = (*blade, elements.loss, elements.blades, state)
     k.solve_lanes(
         *common,
         np.empty(k.scratch_size(n_points, n_elements)),
