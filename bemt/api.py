@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -13,8 +14,9 @@ if TYPE_CHECKING:
     import xarray as xr
 
     from bemt.case.load import Case
+    from bemt.study.compare import Comparison
 
-__all__ = ["coefficient_table", "envelope", "load"]
+__all__ = ["coefficient_table", "compare", "envelope", "load"]
 
 
 def load(path: str | Path) -> Case:
@@ -41,7 +43,7 @@ def load(path: str | Path) -> Case:
 
 
 def _attributes(case: Case) -> dict[str, str | float | int]:
-    from bemt.table.build import references
+    from bemt.table.references import references
 
     found: dict[str, str | float | int] = {
         "title": case.title,
@@ -110,8 +112,13 @@ def envelope(case: Case, *, table: xr.Dataset | None = None) -> xr.Dataset:
     InputError
         If the case lacks a part that the envelope needs, or the table is that of another propeller.
     """
+    from dataclasses import replace
+
+    import numpy as np
+
+    from bemt.blade.untwist import rigid_blade_note
     from bemt.flight.envelope import build_envelope
-    from bemt.table.build import build_lookup
+    from bemt.table.build_lookup import build_lookup
 
     if table is None:
         lookup = build_lookup(case.propeller, case.air, case.model)
@@ -125,7 +132,7 @@ def envelope(case: Case, *, table: xr.Dataset | None = None) -> xr.Dataset:
                 f"is of a propeller of {lookup.diameter:.4g} m diameter; that of the case has "
                 f"{case.propeller.diameter:.4g} m",
             )
-    return build_envelope(
+    run = build_envelope(
         lookup,
         case.air,
         motor=case.motor,
@@ -137,4 +144,47 @@ def envelope(case: Case, *, table: xr.Dataset | None = None) -> xr.Dataset:
         airspeed=case.envelope_airspeed,
         throttle=case.envelope_throttle,
         rpm=case.grid.rpm if case.motor is None else None,
-    ).to_dataset(_attributes(case))
+    )
+    notes = []
+    turning = np.nan_to_num(run.values["rpm"] if run.rpm is None else run.rpm)
+    rigid = rigid_blade_note(case.propeller, float(turning.max()))
+    if rigid is not None:
+        notes.append(rigid)
+    if case.grid.inclined:
+        notes.append("incidence of [grid] is of the coefficient table alone: the envelope is of axial flow")
+    return replace(run, notes=(*run.notes, *notes)).to_dataset(_attributes(case))
+
+
+def compare(case: Case, *measured: str | Path) -> Comparison:
+    """Judge the prediction of a case by measured points.
+
+    Parameters
+    ----------
+    case : Case
+        From `load`.
+    *measured : str or pathlib.Path
+        CSV files of readings, at least one; several count as one.
+
+    Returns
+    -------
+    Comparison
+        Measured and predicted coefficients of every row, errors, landmarks of each run, and what one change to the
+        whole blade would leave.
+
+    Raises
+    ------
+    CaseError
+        If anything in a file is wrong, with every complaint found.
+    InputError
+        If no file is named, or the readings have neither thrust nor torque.
+    """
+    from bemt.case.readings import Readings, load_readings
+    from bemt.study.compare import compare as judge
+
+    if not measured:
+        raise InputError("measured", "at least one file of readings is needed")
+    parts = [load_readings(path, diameter=case.propeller.diameter, air=case.air) for path in measured]
+    found = judge(case.propeller, case.model, Readings.joined(parts))
+    if case.installation is None:
+        return found
+    return replace(found, notes=(*found.notes, "[installation] is not applied to readings of a propeller"))

@@ -21,6 +21,7 @@ class AnalyticLoads:
     stalled_share: np.ndarray
     outside_polar_share: np.ndarray
     low_reynolds_share: np.ndarray
+    above_divergence_share: np.ndarray
     status: np.ndarray
 
 
@@ -49,5 +50,5 @@ class AnalyticPropeller:
         torque = density * self.diameter**5 / (2.0 * math.pi) * np.tensordot(self.power, parts, 1)
         share = np.where(known, 0.0, np.nan)
         return AnalyticLoads(
-            np.where(known, thrust, np.nan), np.where(known, torque, np.nan), share, share, share, np.where(known, 1, 0)
+            np.where(known, thrust, np.nan), np.where(known, torque, np.nan), *[share] * 4, np.where(known, 1, 0)
         )

@@ -22,7 +22,8 @@ from bemt.errors import InputError, RunError
 from bemt.figures.coefficients import coefficient_figure
 from bemt.figures.envelope import envelope_figure
 from bemt.figures.style import MARKERS, ramp, save, spread
-from bemt.quantities.registry import STATUS_NOT_CONVERGED, TABLE, by_name
+from bemt.quantities.dataset import build_dataset
+from bemt.quantities.registry import STATUS_NOT_CONVERGED, TABLE, TABLE_AT_INCIDENCE, by_name
 
 
 def hard_table() -> xr.Dataset:
@@ -37,7 +38,40 @@ def hard_table() -> xr.Dataset:
     )
 
 
+def inclined_table(incidence: tuple[float, ...]) -> xr.Dataset:
+    """The made-up table over incidences: everything falls with the cosine, forces in the plane grow with the sine."""
+    flat = synthetic.coefficient_table(rpm=(3000.0, 6000.0), count=15)
+    angle = np.radians(incidence)
+    J = flat["advance_ratio"].values
+    values, axes = {}, {"rpm": flat["rpm"].values, "advance_ratio": J, "incidence": np.array(incidence)}
+    for quantity in TABLE_AT_INCIDENCE:
+        if quantity.name not in flat:
+            values[quantity.name] = 0.01 * np.broadcast_to(J[:, None] * np.sin(angle), (2, J.size, angle.size))
+        elif "incidence" in quantity.dimensions:
+            array = flat[quantity.name].values[..., None]
+            values[quantity.name] = (
+                array * np.cos(angle) if array.dtype.kind == "f" else np.repeat(array, angle.size, -1)
+            )
+        else:
+            values[quantity.name] = flat[quantity.name].values
+    values["trust_reasons"] = np.where(angle > 0.3, values["trust_reasons"] | 512, values["trust_reasons"])
+    return build_dataset(TABLE_AT_INCIDENCE, values, axes, synthetic.ATTRS)
+
+
+def descending_table() -> xr.Dataset:
+    """The made-up table shifted to where the air comes from behind in its first third."""
+    table = synthetic.coefficient_table(count=21)
+    J = table["advance_ratio"].values - 0.33
+    down = np.broadcast_to(J < 0.0, table["trust"].shape)
+    for name, changed in (("trust", 1), ("trust_reasons", 256)):
+        table[name] = (table[name].dims, np.where(down, changed, table[name].values), table[name].attrs)
+    return table.assign_coords(advance_ratio=("advance_ratio", J, table["advance_ratio"].attrs))
+
+
 FIGURES = {
+    "incidences": lambda: coefficient_figure(inclined_table((0.0, 10.0, 30.0, 60.0))),
+    "one incidence": lambda: coefficient_figure(inclined_table((30.0,))),
+    "descent": lambda: coefficient_figure(descending_table()),
     "coefficients": lambda: coefficient_figure(synthetic.coefficient_table()),
     "one rpm": lambda: coefficient_figure(synthetic.coefficient_table(rpm=(4000.0,))),
     "hard coefficients": lambda: coefficient_figure(hard_table()),
@@ -131,6 +165,40 @@ def test_every_point_of_the_table_is_on_its_line() -> None:
             if np.isfinite(value):
                 assert (float(table["advance_ratio"].values[j]), value) in vertices
         assert axes.get_ylabel().startswith(by_name(TABLE)[name].long_name)
+
+
+def test_lines_of_a_table_at_incidence_are_the_incidences_at_the_highest_rpm() -> None:
+    table = inclined_table((0.0, 10.0, 30.0, 60.0))
+    figure = coefficient_figure(table)
+    names = [
+        "thrust_coefficient",
+        "power_coefficient",
+        "efficiency",
+        "normal_force_coefficient",
+        "yaw_moment_coefficient",
+    ]
+    assert len(figure.axes) == len(names)
+    for axes, name in zip(figure.axes, names, strict=True):
+        vertices = {tuple(row) for c in axes.collections for path in c.get_paths() for row in path.vertices}
+        for i, j in itertools.product(range(4), range(15)):
+            value = float(table[name].values[-1, j, i])
+            if np.isfinite(value):
+                assert (float(table["advance_ratio"].values[j]), value) in vertices
+        assert axes.get_ylabel().startswith(by_name(TABLE_AT_INCIDENCE)[name].long_name)
+    texts = " ".join(text.get_text() for text in figure.findobj(Text))
+    assert "6000 rpm, the highest of 2" in texts
+    assert "incidence 60°" in texts
+    assert "large incidence at" in texts
+
+
+def test_a_note_says_in_words_why_and_where_points_are_less_than_good() -> None:
+    table = synthetic.coefficient_table()
+    texts = " ".join(text.get_text() for text in coefficient_figure(table).texts)
+    trust, slow = table["trust"].values, (table["trust_reasons"].values & 4) != 0
+    for grade, code in (("fair", 2), ("poor", 1)):
+        here = trust == code
+        assert f"Trust {grade} at {here.sum()} points: " in texts
+        assert f"low Reynolds number at {(slow & here).sum()}" in texts
 
 
 def test_efficiency_comes_down_to_zero_where_the_thrust_ends() -> None:

@@ -17,6 +17,7 @@ from bemt.errors import InputError
 from bemt.quantities.registry import (
     ENVELOPE,
     LOOKUP,
+    SHARES,
     STATUS_CONVERGED,
     STATUS_NOT_CONVERGED,
     STATUS_NOT_RUN,
@@ -47,6 +48,7 @@ def closed_form(**changes: Any) -> Lookup:
         "stalled_share": np.clip(angle / 2.0, 0.0, 1.0),
         "outside_polar_share": np.zeros(m.shape),
         "low_reynolds_share": np.where(re < 6e4, 1.0, 0.0),
+        "above_divergence_share": np.broadcast_to(m**2, m.shape),
         "status": np.ones(m.shape, dtype=np.int16),
         "diameter": 0.3,
         "chord_75": 0.03,
@@ -287,9 +289,7 @@ def test_a_point_by_name(name: str) -> None:
         float(point["thrust"]) * 9.0 / float(point["shaft_power"]), rel=1e-12
     )
     assert point["thrust"].attrs["units"] == by_name(ENVELOPE)["thrust"].units == "N"
-    assert {"trust", "trust_reasons", "status", "stalled_share", "outside_polar_share", "low_reynolds_share"} <= set(
-        point.data_vars
-    )
+    assert {"trust", "trust_reasons", "status", *SHARES} <= set(point.data_vars)
 
 
 def test_at_the_air_of_the_table_it_agrees_with_the_printed_points(name: str) -> None:

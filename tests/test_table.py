@@ -17,6 +17,7 @@ from bemt.case.load import Case
 from bemt.errors import InputError
 from bemt.quantities.registry import (
     RADIAL,
+    SHARES,
     STATUS_CONVERGED,
     STATUS_NOT_CONVERGED,
     STATUS_NOT_RUN,
@@ -245,31 +246,34 @@ def named(reasons: Any) -> set[str]:
 @pytest.mark.parametrize(
     ("status", "shares", "guessed", "expected", "reasons"),
     [
-        (STATUS_CONVERGED, (0.0, 0.0, 0.0, -0.2), False, TRUST_GOOD, set()),
-        (STATUS_CONVERGED, (0.04, 0.04, 0.09, 0.0), False, TRUST_GOOD, set()),
-        (STATUS_CONVERGED, (0.2, 0.0, 0.0, -0.2), False, TRUST_FAIR, {"stalled"}),
-        (STATUS_CONVERGED, (0.5, 0.0, 0.0, -0.2), False, TRUST_POOR, {"stalled"}),
-        (STATUS_CONVERGED, (0.0, 0.2, 0.0, -0.2), False, TRUST_FAIR, {"outside_polars"}),
-        (STATUS_CONVERGED, (0.0, 0.5, 0.2, -0.2), False, TRUST_POOR, {"outside_polars", "low_reynolds"}),
-        (STATUS_CONVERGED, (0.0, 0.0, 1.0, -0.2), False, TRUST_FAIR, {"low_reynolds"}),
-        (STATUS_CONVERGED, (0.0, 0.0, 0.0, 0.05), False, TRUST_FAIR, {"high_mach"}),
-        (STATUS_CONVERGED, (0.0, 0.0, 0.0, 0.2), False, TRUST_POOR, {"high_mach"}),
-        (STATUS_SEVERAL_ROOTS, (0.01, 0.0, 0.0, -0.2), False, TRUST_GOOD, set()),
-        (STATUS_SEVERAL_ROOTS, (0.1, 0.0, 0.0, -0.2), False, TRUST_FAIR, {"stalled", "several_roots"}),
-        (STATUS_REVERSED_FLOW, (0.0, 0.0, 0.0, -0.2), False, TRUST_POOR, {"flow_reversed"}),
-        (STATUS_NOT_CONVERGED, (0.0, 0.0, 0.0, -0.2), False, TRUST_POOR, {"not_converged"}),
-        (STATUS_CONVERGED, (0.0, 0.0, 0.0, -0.2), True, TRUST_FAIR, {"section_guessed"}),
-        (STATUS_NOT_RUN, (np.nan, np.nan, np.nan, np.nan), True, TRUST_NOT_RUN, set()),
+        (STATUS_CONVERGED, (0.0, 0.0, 0.0, 0.0, -0.2), False, TRUST_GOOD, set()),
+        (STATUS_CONVERGED, (0.04, 0.04, 0.09, 0.0, 0.0), False, TRUST_GOOD, set()),
+        (STATUS_CONVERGED, (0.2, 0.0, 0.0, 0.0, -0.2), False, TRUST_FAIR, {"stalled"}),
+        (STATUS_CONVERGED, (0.5, 0.0, 0.0, 0.0, -0.2), False, TRUST_POOR, {"stalled"}),
+        (STATUS_CONVERGED, (0.0, 0.2, 0.0, 0.0, -0.2), False, TRUST_FAIR, {"outside_polars"}),
+        (STATUS_CONVERGED, (0.0, 0.5, 0.2, 0.0, -0.2), False, TRUST_POOR, {"outside_polars", "low_reynolds"}),
+        (STATUS_CONVERGED, (0.0, 0.0, 1.0, 0.0, -0.2), False, TRUST_FAIR, {"low_reynolds"}),
+        (STATUS_CONVERGED, (0.0, 0.0, 0.0, 0.0, 0.04), False, TRUST_FAIR, {"high_mach"}),
+        (STATUS_CONVERGED, (0.0, 0.0, 0.0, 0.0, 0.06), False, TRUST_POOR, {"high_mach"}),
+        (STATUS_CONVERGED, (0.0, 0.0, 0.0, 0.1, -0.1), False, TRUST_FAIR, {"high_mach"}),
+        (STATUS_CONVERGED, (0.0, 0.0, 0.0, 0.3, -0.1), False, TRUST_POOR, {"high_mach"}),
+        (STATUS_SEVERAL_ROOTS, (0.01, 0.0, 0.0, 0.0, -0.2), False, TRUST_GOOD, set()),
+        (STATUS_SEVERAL_ROOTS, (0.1, 0.0, 0.0, 0.0, -0.2), False, TRUST_FAIR, {"stalled", "several_roots"}),
+        (STATUS_REVERSED_FLOW, (0.0, 0.0, 0.0, 0.0, -0.2), False, TRUST_POOR, {"flow_reversed"}),
+        (STATUS_NOT_CONVERGED, (0.0, 0.0, 0.0, 0.0, -0.2), False, TRUST_POOR, {"not_converged"}),
+        (STATUS_CONVERGED, (0.0, 0.0, 0.0, 0.0, -0.2), True, TRUST_FAIR, {"section_guessed"}),
+        (STATUS_NOT_RUN, (np.nan, np.nan, np.nan, 0.0, np.nan), True, TRUST_NOT_RUN, set()),
     ],
 )
 def test_grades(status: int, shares: tuple[float, ...], guessed: bool, expected: int, reasons: set[str]) -> None:
-    trust, why = grade(status, *shares, section_guessed=guessed)
+    trust, why = grade(status, dict(zip(SHARES, shares[:4], strict=True)), shares[4], section_guessed=guessed)
     assert trust == expected
     assert named(why) == reasons
 
 
 def test_grades_broadcast_and_worst_counts() -> None:
-    trust, why = grade(np.array([[1], [3]]), np.array([0.0, 0.1, 0.6]), 0.0, 0.0, -0.1)
+    shares = dict.fromkeys(SHARES, 0.0) | {"stalled_share": np.array([0.0, 0.1, 0.6])}
+    trust, why = grade(np.array([[1], [3]]), shares, -0.1)
     np.testing.assert_array_equal(trust, [[TRUST_GOOD, TRUST_FAIR, TRUST_POOR], [TRUST_POOR] * 3])
     assert named(why[1, 2]) == {"stalled", "flow_reversed"}
 

@@ -40,8 +40,9 @@ def _figure(table: xr.Dataset) -> Figure:
 def command(case: str, outputs: tuple[str, ...], figure: str | None, radial: bool, strict: bool) -> None:
     """Compute the coefficients of a propeller.
 
-    CT, CP and efficiency over advance ratio and rpm, each point with a grade of trust. Without -o a short table goes
-    to standard output. CASE may be - for standard input.
+    CT, CP and efficiency over advance ratio and rpm, each point with a grade of trust; forces in the plane of the disk
+    and moments too where the case asks for an incidence. Without -o a short table goes to standard output. CASE may
+    be - for standard input.
     """
     check_targets(outputs, figure)
     import bemt

@@ -32,7 +32,7 @@ class ShaftPoints:
         [rpm], [N], [N m], [W].
     propeller_efficiency : numpy.ndarray
         Thrust power over shaft power, NaN where the propeller does not propel.
-    outside_polar_share, stalled_share, low_reynolds_share : numpy.ndarray
+    outside_polar_share, stalled_share, low_reynolds_share, above_divergence_share : numpy.ndarray
         Shares of the propeller's span.
     trust, trust_reasons : numpy.ndarray of int
         Codes and bits of the registry.
@@ -49,6 +49,7 @@ class ShaftPoints:
     outside_polar_share: FloatArray
     stalled_share: FloatArray
     low_reynolds_share: FloatArray
+    above_divergence_share: FloatArray
     trust: NDArray[np.int16]
     trust_reasons: NDArray[np.int16]
     status: NDArray[np.int16]
@@ -171,6 +172,7 @@ class BarePropeller:
             outside_polar_share=state.outside_polar_share.reshape(shape),
             stalled_share=state.stalled_share.reshape(shape),
             low_reynolds_share=state.low_reynolds_share.reshape(shape),
+            above_divergence_share=state.above_divergence_share.reshape(shape),
             trust=trust.reshape(shape),
             trust_reasons=reasons.reshape(shape),
             status=state.status.reshape(shape),

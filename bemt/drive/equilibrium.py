@@ -54,7 +54,7 @@ class OperatingPoints:
         Shares of power; NaN where power does not flow from the battery to the air.
     winding_temperature : numpy.ndarray
         Steady [degree Celsius]; NaN where not modelled, infinite where the winding runs away.
-    outside_polar_share, stalled_share, low_reynolds_share : numpy.ndarray
+    outside_polar_share, stalled_share, low_reynolds_share, above_divergence_share : numpy.ndarray
         Shares of the propeller's span.
     trust, trust_reasons : numpy.ndarray of int
         Codes and bits of the registry.
@@ -83,6 +83,7 @@ class OperatingPoints:
     outside_polar_share: FloatArray
     stalled_share: FloatArray
     low_reynolds_share: FloatArray
+    above_divergence_share: FloatArray
     trust: NDArray[np.int16]
     trust_reasons: NDArray[np.int16]
     status: NDArray[np.int16]
@@ -297,6 +298,7 @@ class Drive:
             "outside_polar_share": state.outside_polar_share,
             "stalled_share": state.stalled_share,
             "low_reynolds_share": state.low_reynolds_share,
+            "above_divergence_share": state.above_divergence_share,
             "trust": trust,
             "trust_reasons": reasons,
             "status": state.status,
@@ -324,6 +326,7 @@ def _only_where(kept: NDArray[np.bool_], state: PropellerState) -> PropellerStat
         stalled_share=np.where(kept, state.stalled_share, np.nan),
         outside_polar_share=np.where(kept, state.outside_polar_share, np.nan),
         low_reynolds_share=np.where(kept, state.low_reynolds_share, np.nan),
+        above_divergence_share=np.where(kept, state.above_divergence_share, np.nan),
         status=state.status,
     )
 

@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 
 from bemt.air import Air
 from bemt.drive.roots import FloatArray, IndexArray, bracketed_root
-from bemt.quantities.registry import STATUS_CONVERGED, STATUS_NOT_CONVERGED
+from bemt.quantities.registry import SHARES, STATUS_CONVERGED, STATUS_NOT_CONVERGED
 from bemt.table.validity import grade
 
 RPM_PER_RAD_S = 30.0 / math.pi
@@ -50,6 +50,11 @@ class Loads(Protocol):
     @property
     def low_reynolds_share(self) -> NDArray[np.float64]:
         """Share of the span below a Reynolds number of 60 000."""
+        ...
+
+    @property
+    def above_divergence_share(self) -> NDArray[np.float64]:
+        """Share of the span above the drag-divergence Mach number."""
         ...
 
     @property
@@ -111,7 +116,7 @@ class PropellerState:
         Angular speed [rad/s].
     thrust, torque : numpy.ndarray, shape (n,)
         [N], [N m].
-    stalled_share, outside_polar_share, low_reynolds_share : numpy.ndarray, shape (n,)
+    stalled_share, outside_polar_share, low_reynolds_share, above_divergence_share : numpy.ndarray, shape (n,)
         Shares of the span.
     status : numpy.ndarray of int, shape (n,)
         Codes of the registry.
@@ -123,6 +128,7 @@ class PropellerState:
     stalled_share: FloatArray
     outside_polar_share: FloatArray
     low_reynolds_share: FloatArray
+    above_divergence_share: FloatArray
     status: NDArray[np.int16]
 
 
@@ -169,21 +175,22 @@ def propeller_state(
     """
     at_rest = (speed == 0.0) & (airspeed == 0.0)
     asked = np.isfinite(speed) & np.isfinite(airspeed) & ~at_rest
-    thrust, torque, stalled, outside, low = (np.where(at_rest, 0.0, np.nan) for _ in range(5))
+    thrust, torque = (np.where(at_rest, 0.0, np.nan) for _ in range(2))
+    shares = {name: np.where(at_rest, 0.0, np.nan) for name in SHARES}
     status = np.where(at_rest, STATUS_CONVERGED, STATUS_NOT_CONVERGED).astype(np.int16)
     if asked.any():
         loads = propeller.loads(airspeed[asked], speed[asked] * RPM_PER_RAD_S, air=air)
         thrust[asked], torque[asked] = loads.thrust, loads.torque
-        stalled[asked], outside[asked] = loads.stalled_share, loads.outside_polar_share
-        low[asked] = loads.low_reynolds_share
+        for name, share in shares.items():
+            share[asked] = getattr(loads, name)
         status[asked] = loads.status
         missing = np.isnan(thrust) | np.isnan(torque)
         status[missing] = STATUS_NOT_CONVERGED
     else:
         missing = np.isnan(thrust)
-    for array in (thrust, torque, stalled, outside, low):
+    for array in (thrust, torque, *shares.values()):
         array[missing] = np.nan
-    return PropellerState(np.where(missing, np.nan, speed), thrust, torque, stalled, outside, low, status)
+    return PropellerState(np.where(missing, np.nan, speed), thrust, torque, **shares, status=status)
 
 
 def graded(
@@ -210,9 +217,7 @@ def graded(
     tip_mach = np.hypot(airspeed, 0.5 * propeller.diameter * state.speed) / (air or propeller.air).speed_of_sound
     return grade(
         state.status,
-        state.stalled_share,
-        state.outside_polar_share,
-        state.low_reynolds_share,
+        {name: getattr(state, name) for name in SHARES},
         tip_mach - propeller.tip_divergence_mach,
         section_guessed=propeller.section_guessed,
     )

@@ -7,26 +7,27 @@ import textwrap
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
+from matplotlib.artist import Artist
 from matplotlib.axes import Axes
 from matplotlib.collections import LineCollection
 from matplotlib.figure import Figure
 from matplotlib.lines import Line2D
+from matplotlib.patches import Patch
 from numpy.typing import NDArray
 
 from bemt.figures.style import INK, LIMIT, MARKERS, QUIET, our_style, ramp
-from bemt.files.flags import spoken
 from bemt.quantities.registry import (
     COORDINATES,
     STATUS_NOT_CONVERGED,
-    TABLE,
+    TABLE_AT_INCIDENCE,
     TRUST_FAIR,
     TRUST_FLAGS,
     TRUST_GOOD,
     TRUST_NOT_RUN,
     TRUST_POOR,
-    TRUST_REASONS,
     by_name,
 )
+from bemt.table.validity import trust_in_words
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -38,6 +39,10 @@ _PANELS = (
     ("power_coefficient", "$C_P$"),
     ("efficiency", r"$\eta$"),
 )
+_INCLINED_PANELS = (
+    ("normal_force_coefficient", "$C_N$"),
+    ("yaw_moment_coefficient", "$C_n$"),
+)
 _DASHES: dict[int, Any] = {
     TRUST_NOT_RUN: (0, (1.0, 1.6)),
     TRUST_POOR: (0, (1.0, 1.6)),
@@ -46,7 +51,10 @@ _DASHES: dict[int, Any] = {
 }
 _NAMED_LINES = 10
 _GUESSED = 128
-_WIDTH, _PANEL_HEIGHT, _PANEL_GAP = 7.4, 2.55, 0.22
+_AXES = {"advance_ratio": "J"}
+_WIDTH, _PANEL_HEIGHT, _LOW_PANEL_HEIGHT, _PANEL_GAP = 7.4, 2.55, 1.85, 0.22
+_LINE, _NOTE_LENGTH = 0.155, 118
+_DESCENT = "#f0ece2"
 
 
 def _graded_line(
@@ -103,18 +111,22 @@ def _closed(
     )
 
 
-def _reasons(table: xr.Dataset) -> str:
-    """Name what keeps points of this table from a good grade, the most frequent first."""
+def _reasons(table: xr.Dataset) -> list[str]:
+    """Say why points of this table have less than a good grade, and where, in lines of the page's width."""
     if "trust_reasons" not in table:
-        return ""
-    codes = table["trust_reasons"].values
-    counts = {word: int(((codes & bit) != 0).sum()) for bit, word in TRUST_REASONS.items()}
-    named = sorted((word for word, count in counts.items() if count), key=lambda word: -counts[word])
-    return ", ".join(spoken(word) for word in named)
+        return []
+    axes = {_AXES.get(str(name), str(name)): table[name].values for name in table["trust"].dims}
+    grades = trust_in_words(table["trust"].values, table["trust_reasons"].values, axes)[1:]
+    return [line for grade in grades for line in textwrap.wrap(f"Trust {grade}.", _NOTE_LENGTH)]
 
 
-def _line_label(table: xr.Dataset, index: int) -> str:
+def _line_label(lines: xr.Dataset, along: str, index: int) -> str:
     parts = []
+    if along == "incidence":
+        return f"incidence {float(lines['incidence'].values[index]):g}°"
+    if "incidence" in lines.coords:
+        return f"{float(lines['rpm'].values[index]):.0f} rpm"
+    table = lines
     for name, symbol in (("static_figure_of_merit", "FM"), ("peak_efficiency", r"peak $\eta$")):
         if name in table and np.isfinite(value := float(table[name].values[index])):
             parts.append(f"{symbol} {value:.2f}")
@@ -122,7 +134,21 @@ def _line_label(table: xr.Dataset, index: int) -> str:
     return f"{rpm}: {', '.join(parts)}" if parts else rpm
 
 
-def _subtitle(table: xr.Dataset) -> str:
+def _lines(table: xr.Dataset) -> tuple[xr.Dataset, str, str]:
+    """Return what is drawn over the advance ratio, the axis that tells the lines apart, and what the head says of it.
+
+    With several incidences these are the lines, at the highest rpm; with one, as without, the rpm are.
+    """
+    if "incidence" not in table.dims:
+        return table, "rpm", ""
+    if table.sizes["incidence"] > 1:
+        count = table.sizes["rpm"]
+        named = f"{float(table['rpm'].values[-1]):.0f} rpm" + (f", the highest of {count}" if count > 1 else "")
+        return table.isel(rpm=-1), "incidence", named
+    return table.isel(incidence=0), "rpm", f"incidence {float(table['incidence'].values[0]):g}°"
+
+
+def _subtitle(table: xr.Dataset, named: str) -> str:
     attrs, parts = table.attrs, []
     if "blades" in attrs:
         parts.append(f"{int(attrs['blades'])} blades")
@@ -130,6 +156,8 @@ def _subtitle(table: xr.Dataset) -> str:
         parts.append(f"diameter {float(attrs['diameter']) * 1e3:.0f} mm")
     if "air_density" in attrs:
         parts.append(f"air {float(attrs['air_density']):.3f} kg/m³")
+    if named:
+        parts.append(named)
     return "   ".join(parts)
 
 
@@ -139,50 +167,54 @@ def coefficient_figure(table: xr.Dataset) -> Figure:
     Parameters
     ----------
     table : xarray.Dataset
-        A coefficient table over `rpm` and `advance_ratio`. Its attributes `title`, `blades`, `diameter` [m] and
-        `air_density` [kg/m3] make the head, where they are there.
+        A coefficient table over `rpm` and `advance_ratio`, and `incidence` where it has one. Its attributes `title`,
+        `blades`, `diameter` [m] and `air_density` [kg/m3] make the head, where they are there.
 
     Returns
     -------
     matplotlib.figure.Figure
-        Three panels over the advance ratio. Colour and shape name the rpm; full, dashed and dotted lines stand for
-        good, fair and poor trust, and hollow shapes for poor.
+        Three panels over the advance ratio, at incidence two more for normal force and yaw moment. Colour and shape
+        name the rpm, or the incidence at the highest rpm where there are several; full, dashed and dotted lines stand
+        for good, fair and poor trust, and hollow shapes for poor. Descent is shaded. A note says in words what keeps
+        points from a good grade, and where.
     """
-    quantities, axis = by_name(TABLE), by_name(COORDINATES)["advance_ratio"]
-    table = table.transpose("rpm", "advance_ratio", ...)
-    J, count = table["advance_ratio"].values, table.sizes["rpm"]
-    grade = table["trust"].values if "trust" in table else np.full((count, J.size), TRUST_GOOD)
+    quantities, axis = by_name(TABLE_AT_INCIDENCE), by_name(COORDINATES)["advance_ratio"]
+    lines, along, head_words = _lines(table)
+    lines = lines.transpose(along, "advance_ratio", ...)
+    shown = _PANELS + (_INCLINED_PANELS if "incidence" in table.dims else ())
+    tall = _PANEL_HEIGHT if len(shown) == len(_PANELS) else _LOW_PANEL_HEIGHT
+    J, count = lines["advance_ratio"].values, lines.sizes[along]
+    grade = lines["trust"].values if "trust" in lines else np.full((count, J.size), TRUST_GOOD)
     guessed = "trust_reasons" in table and bool((table["trust_reasons"].values & _GUESSED).any())
     named = np.unique(np.linspace(0, count - 1, min(count, _NAMED_LINES)).round().astype(int))
 
     title = textwrap.wrap(str(table.attrs.get("title", "")) or "Propeller coefficients", 62)
+    reasons = _reasons(table)
     rows = -(-len(named) // 2)
     head = 0.30 + 0.26 * len(title) + 0.26 + (0.36 if guessed else 0.0) + 0.22 * rows + 0.12
-    foot = 1.12
-    height = head + 3 * _PANEL_HEIGHT + 2 * _PANEL_GAP + foot
+    foot = 0.95 + _LINE * len(reasons)
+    height = head + len(shown) * tall + (len(shown) - 1) * _PANEL_GAP + foot
 
     with our_style():
         figure = Figure(figsize=(_WIDTH, height))
         left, right = 0.86 / _WIDTH, 1 - 0.25 / _WIDTH
         panels: list[Axes] = []
-        for k in range(3):
-            bottom = (foot + (2 - k) * (_PANEL_HEIGHT + _PANEL_GAP)) / height
+        for k in range(len(shown)):
+            bottom = (foot + (len(shown) - 1 - k) * (tall + _PANEL_GAP)) / height
             panels.append(
-                figure.add_axes(
-                    (left, bottom, right - left, _PANEL_HEIGHT / height), sharex=panels[0] if panels else None
-                )
+                figure.add_axes((left, bottom, right - left, tall / height), sharex=panels[0] if panels else None)
             )
         colours = ramp(count)
-        for axes, (name, symbol) in zip(panels, _PANELS, strict=True):
-            values = table[name].values
+        for axes, (name, symbol) in zip(panels, shown, strict=True):
+            values = lines[name].values
             for index in range(count):
                 x, y, trust, end = J, values[index], grade[index], math.nan
-                if name == "efficiency" and "zero_thrust_advance_ratio" in table:
+                if name == "efficiency" and "incidence" not in table.dims and "zero_thrust_advance_ratio" in table:
                     end = float(table["zero_thrust_advance_ratio"].values[index])
                     x, y, trust = _closed(x, y, trust, end)
                 _graded_line(axes, x, y, trust, colours[index], MARKERS[index % len(MARKERS)], 2 * index + 1, end)
             failed = (
-                table["status"].values == STATUS_NOT_CONVERGED if "status" in table else np.zeros_like(values, bool)
+                lines["status"].values == STATUS_NOT_CONVERGED if "status" in lines else np.zeros_like(values, bool)
             )
             axes.plot(
                 np.broadcast_to(J, values.shape)[failed], values[failed], "x", color=LIMIT, markersize=7, zorder=4
@@ -193,7 +225,9 @@ def coefficient_figure(table: xr.Dataset) -> Figure:
             axes.axhline(0.0, color=QUIET, linewidth=0.9, zorder=1)
             axes.tick_params(labelbottom=axes is panels[-1], length=3)
             axes.yaxis.set_label_coords(-0.095, 0.5)
-        panels[-1].set_ylim(bottom=-0.02)
+            if J[0] < 0.0:
+                axes.axvspan(J[0], min(0.0, J[-1]), facecolor=_DESCENT, edgecolor="none", zorder=0)
+        panels[2].set_ylim(bottom=-0.02)
         panels[-1].set_xlabel(f"{axis.long_name}  $J$")
 
         def down(inches: float) -> float:
@@ -203,7 +237,7 @@ def coefficient_figure(table: xr.Dataset) -> Figure:
         for line in title:
             figure.text(left, down(y), line, fontsize=13, fontweight="bold", va="center")
             y += 0.26
-        figure.text(left, down(y), _subtitle(table), fontsize=9.5, color=QUIET, va="center")
+        figure.text(left, down(y), _subtitle(table, head_words), fontsize=9.5, color=QUIET, va="center")
         y += 0.26
         if guessed:
             figure.text(
@@ -218,7 +252,7 @@ def coefficient_figure(table: xr.Dataset) -> Figure:
             y += 0.36
         handles = [
             Line2D([], [], color=colours[k], marker=MARKERS[k % len(MARKERS)], markersize=5.2, linewidth=1.7,
-                   label=_line_label(table, int(k)))
+                   label=_line_label(lines, along, int(k)))
             for k in named
         ]  # fmt: skip
         figure.legend(
@@ -226,28 +260,32 @@ def coefficient_figure(table: xr.Dataset) -> Figure:
             handlelength=2.2, columnspacing=2.2, labelspacing=0.35, borderaxespad=0.0, borderpad=0.0,
         )  # fmt: skip
         present = [code for code in (TRUST_GOOD, TRUST_FAIR, TRUST_POOR) if (grade == code).any()]
-        marks = [
+        marks: list[Artist] = [
             Line2D([], [], color=INK, linewidth=1.5, linestyle=_DASHES[code], marker="o" if code == TRUST_POOR else "",
                    markerfacecolor="white", markersize=5, label=f"{TRUST_FLAGS[code]} trust")
             for code in present
         ]  # fmt: skip
-        if "status" in table and (table["status"].values == STATUS_NOT_CONVERGED).any():
+        if J[0] < 0.0:
+            marks.append(Patch(facecolor=_DESCENT, edgecolor="none", label="descent, estimated"))
+        if "status" in lines and (lines["status"].values == STATUS_NOT_CONVERGED).any():
             marks.append(Line2D([], [], color=LIMIT, marker="x", linestyle="", label="not converged"))
         figure.legend(
-            handles=marks, loc="lower left", bbox_to_anchor=(left - 0.008, 0.46 / height), ncols=4, fontsize=8.5,
-            handlelength=2.8, columnspacing=1.6, borderaxespad=0.0, borderpad=0.0,
+            handles=marks, loc="lower left", bbox_to_anchor=(left - 0.008, (0.29 + _LINE * len(reasons)) / height),
+            ncols=5, fontsize=8.5, handlelength=2.8, columnspacing=1.6, borderaxespad=0.0, borderpad=0.0,
         )  # fmt: skip
-        reasons = _reasons(table)
-        if reasons:
-            figure.text(
-                left, 0.32 / height, f"Less than good because: {reasons}.", fontsize=8, color=QUIET, va="center"
-            )
+        for row, line in enumerate(reasons):
+            above = 0.31 + _LINE * (len(reasons) - 1 - row)
+            figure.text(left, above / height, line, fontsize=7.5, color=QUIET, va="center")
         figure.text(
             left,
             0.14 / height,
-            "$J = V/(nD)$,  $C_T = T/(ρn^2D^4)$,  $C_P = P/(ρn^3D^5)$,  $η = J C_T/C_P$,  n in rev/s",
+            "$J = V/(nD)$,  $C_T = T/(ρn^2D^4)$,  $C_P = P/(ρn^3D^5)$,  "
+            + (r"$η = J\,\cos i\;C_T/C_P$" if "incidence" in table.dims else "$η = J C_T/C_P$")
+            + ",  n in rev/s",
             fontsize=8, color=QUIET, va="center",
         )  # fmt: skip
         if len(named) < count:
-            panels[0].set_title(f"{count} rpm in all; lines between those named run in order", fontsize=8, loc="right")
+            panels[0].set_title(
+                f"{count} {along} in all; lines between those named run in order", fontsize=8, loc="right"
+            )
     return figure

@@ -18,10 +18,12 @@ if TYPE_CHECKING:
 # The set of dimensions that gives FILE.csv comes first; the others say what is appended to FILE.
 _SUFFIXES = {
     ("rpm", "advance_ratio"): "",
+    ("rpm", "advance_ratio", "incidence"): "",
     ("airspeed", "throttle"): "",
     ("airspeed", "rpm"): "",
     ("rpm",): "_rpm",
     ("rpm", "advance_ratio", "r_over_R"): "_radial",
+    ("rpm", "advance_ratio", "incidence", "r_over_R"): "_radial",
     ("airspeed",): "_level",
     ("point",): "_points",
 }

@@ -4,12 +4,11 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Any
 
+from bemt.quantities.registry import SPOKEN_REASONS
+
 if TYPE_CHECKING:
     import numpy as np
     import xarray as xr
-
-
-_SPOKEN = {"low_reynolds": "low Reynolds number", "high_mach": "high Mach number"}
 
 
 def spoken(word: str) -> str:
@@ -23,9 +22,9 @@ def spoken(word: str) -> str:
     Returns
     -------
     str
-        The same with spaces for underscores; "low_reynolds" becomes "low Reynolds number".
+        A reason of a grade of trust in the registry's words, any other word with spaces for its underscores.
     """
-    return _SPOKEN.get(word, word.replace("_", " "))
+    return SPOKEN_REASONS.get(word, word.replace("_", " "))
 
 
 def _items(attribute: Any) -> list[int]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import textwrap
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
@@ -10,6 +11,7 @@ import numpy as np
 
 from bemt.files.flags import spoken, words
 from bemt.quantities.registry import STATUS_NOT_CONVERGED, WINDING_CEILING
+from bemt.table.validity import trust_in_words
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -82,7 +84,8 @@ _FULL_COLUMNS: tuple[_Column, ...] = (
 def _number(value: float, digits: int) -> str:
     if value == np.inf:  # of all that is printed only a winding's temperature rises without end
         return "no end"
-    return f"{value:.{digits}f}" if np.isfinite(value) else _MISSING
+    # Adding 0 takes the sign off a zero.
+    return f"{round(value, digits) + 0.0:.{digits}f}" if np.isfinite(value) else _MISSING
 
 
 def _aligned(heads: Sequence[Sequence[str]], rows: Sequence[Sequence[str]], left: int = 0) -> Iterator[str]:
@@ -104,9 +107,9 @@ _OF_AN_RPM = (
 )
 
 
-def _every(count: int) -> list[int]:
+def _every(count: int, shown: int = _ROWS_SHOWN) -> list[int]:
     """Pick evenly spaced rows, the last one always among them."""
-    step = -(-max(count - 1, 1) // (_ROWS_SHOWN - 1))
+    step = -(-max(count - 1, 1) // (shown - 1))
     picked = list(range(0, count, step))
     return picked if picked[-1] == count - 1 else [*picked, count - 1]
 
@@ -117,53 +120,86 @@ def coefficient_text(table: xr.Dataset) -> str:
     Parameters
     ----------
     table : xarray.Dataset
-        A coefficient table over `rpm` and `advance_ratio`.
+        A coefficient table over `rpm` and `advance_ratio`, and `incidence` where it has one.
 
     Returns
     -------
     str
-        For each rpm a line with static values, zero-thrust advance ratio and peak; then for each rpm rows over the
-        advance ratio with CT, CP, efficiency and the grade of trust with its reasons. Long grids are thinned, and say
-        so.
+        For each rpm a line with static values, zero-thrust advance ratio and peak; then for each rpm (and incidence)
+        rows over the advance ratio with the coefficients, efficiency and the grade of trust with its reasons; at the
+        end how many points have which grade, why, and where. Long grids are thinned, and say so.
     """
-    table = table.transpose("rpm", "advance_ratio", ...)
-    J, picked = table["advance_ratio"].values, _every(table.sizes["advance_ratio"])
-    grades = np.array(words(table["trust"]), dtype=object).reshape(table["trust"].shape)
-    reasons = np.array(words(table["trust_reasons"]), dtype=object).reshape(grades.shape)
+    inclined = "incidence" in table.dims
+    order = ("rpm", "advance_ratio", "incidence") if inclined else ("rpm", "advance_ratio")
+    table = table.transpose(*order, ...)
+    several = inclined and table.sizes["incidence"] > 1
+    J = table["advance_ratio"].values
+    picked = _every(J.size, _ROWS_OF_SEVERAL if several else _ROWS_SHOWN)
     lines: list[str] = []
     title = str(table.attrs.get("title", ""))
     if title:
         lines += [title, ""]
     lines += [*_summary(table), ""]
     for k, rpm in enumerate(table["rpm"].values):
-        row = table.isel(rpm=k)
-        lines.append(f"{rpm:.0f} rpm:")
-        cells = [
-            (
-                f"{J[i]:.3f}",
-                _number(float(row["thrust_coefficient"].values[i]), 4),
-                _number(float(row["power_coefficient"].values[i]), 4),
-                _number(float(row["efficiency"].values[i]), 3),
-                _with_reasons(str(grades[k, i]), str(reasons[k, i])),
-            )
-            for i in picked
-        ]
-        body = list(_aligned([("J", "CT", "CP", "eta")], [cell[:4] for cell in cells]))
-        lines.append("  " + body[0] + "  trust")
-        lines += [f"  {text}  {cell[4]}" for text, cell in zip(body[1:], cells, strict=True)]
-        lines.append("")
+        for i in range(table.sizes["incidence"] if inclined else 1):
+            block = table.isel(rpm=k, incidence=i) if inclined else table.isel(rpm=k)
+            where = f", incidence {float(block['incidence']):g} deg" if inclined else ""
+            lines += [f"{rpm:.0f} rpm{where}:", *_coefficient_rows(block, picked), ""]
     if len(picked) < J.size:
         lines.append(f"{len(picked)} of {J.size} advance ratios shown; -o FILE.csv or FILE.nc keeps all.")
+    lines += _trust_lines(table, "", order)
     lines += [
         "J = V/(nD), CT = T/(rho n^2 D^4), CP = P/(rho n^3 D^5), eta = J CT/CP, n in rev/s.",
         "FM = sqrt(2/pi) CT^1.5/CP standing still; J0 = J of no thrust.",
     ]
+    if inclined:
+        lines += [
+            "At incidence i, V along the flight path: eta = J cos(i) CT/CP; FM, J0 and the peak are of axial flow.",
+            "In the plane of the disk CN up, CY to the right; about the hub Cm nose up, Cn nose right: by rho n^2 D^4",
+            "and rho n^2 D^5, seen from behind, the air passing the disk from below to above.",
+        ]
     return "\n".join(lines)
+
+
+_AXES = {"advance_ratio": "J", "airspeed": "V"}
+_ROWS_OF_SEVERAL = 8
+_COEFFICIENT_COLUMNS = (
+    ("J", "advance_ratio", 3),
+    ("CT", "thrust_coefficient", 4),
+    ("CP", "power_coefficient", 4),
+    ("eta", "efficiency", 3),
+    ("CN", "normal_force_coefficient", 4),
+    ("CY", "side_force_coefficient", 4),
+    ("Cm", "pitching_moment_coefficient", 4),
+    ("Cn", "yaw_moment_coefficient", 4),
+)
+
+
+def _trust_lines(dataset: xr.Dataset, prefix: str, axes: tuple[str, ...]) -> Iterator[str]:
+    """Yield how many points have which grade, why, and where."""
+    named = {_AXES.get(axis, axis): dataset[axis].values for axis in axes}
+    best, *others = trust_in_words(dataset[f"{prefix}trust"].values, dataset[f"{prefix}trust_reasons"].values, named)
+    yield f"Trust{' in level flight' if prefix else ''}: {best}"
+    for grade in others:
+        yield from textwrap.wrap(grade, 100, initial_indent="  ", subsequent_indent="    ")
+
+
+def _coefficient_rows(block: xr.Dataset, picked: Sequence[int]) -> Iterator[str]:
+    """Yield head and rows over the advance ratio, the grade of trust with its reasons last."""
+    used = [column for column in _COEFFICIENT_COLUMNS if column[1] in block]
+    grades, reasons = words(block["trust"]) or [], words(block["trust_reasons"]) or []
+    rows = [[_number(float(block[name].values[i]), digits) for _, name, digits in used] for i in picked]
+    body = list(_aligned([[head for head, _, _ in used]], rows))
+    yield f"  {body[0]}  trust"
+    for text, i in zip(body[1:], picked, strict=True):
+        yield f"  {text}  {_with_reasons(grades[i], reasons[i])}"
 
 
 def _summary(table: xr.Dataset) -> Iterator[str]:
     """Yield a line for each rpm: what it does standing still, where its thrust ends, and its best efficiency."""
     still = table.isel(advance_ratio=np.flatnonzero(table["advance_ratio"].values == 0.0)[:1])
+    if "incidence" in still.dims:  # standing still there is none
+        still = still.isel(incidence=0)
     rows = []
     for k, rpm in enumerate(table["rpm"].values):
         row = table.isel(rpm=k)
@@ -297,6 +333,11 @@ def envelope_text(run: xr.Dataset) -> str:
     else:
         lines += ["Level flight: none at any airspeed of the grid.", ""]
     modelled = "winding_temperature" in run and not np.isnan(run["winding_temperature"].values).all()
+    if not flies and "trust_reasons" in run:
+        second = "rpm" if "throttle" not in run.dims else "throttle"
+        lines += _trust_lines(run.transpose("airspeed", second, ...), "", ("airspeed", second))
+    elif "level_trust_reasons" in run and (run["level_trust"].values > 0).any():
+        lines += _trust_lines(run, "level_", ("airspeed",))
     if marked:
         too_hot = ", or a winding too hot" if modelled else ""
         lines.append(f"! beyond a limit of the propeller, motor, controller or battery{too_hot}.")

@@ -37,6 +37,7 @@ from bemt.quantities.registry import (
     TRUST_NOT_RUN,
     WINDING_CEILING,
 )
+from bemt.table.validity import trust_in_words
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -102,7 +103,12 @@ class EnvelopeResult:
         coordinates["point"] = np.array(self.points)
         group = ENVELOPE if self.rpm is None else ENVELOPE_WITHOUT_MOTOR
         notes = "\n".join(part for part in (str(attrs.get("notes", "")), *self.notes) if part)
-        return build_dataset(group, self.values, coordinates, {**attrs, "notes": notes} if notes else attrs)
+        axes = {"V": self.airspeed} | {
+            name: axis for name, axis in (("throttle", self.throttle), ("rpm", self.rpm)) if axis is not None
+        }
+        trust = "\n".join(trust_in_words(self.values["trust"], self.values["trust_reasons"], axes))
+        merged = {**attrs, "trust": trust, **({"notes": notes} if notes else {})}
+        return build_dataset(group, self.values, coordinates, merged)
 
 
 def build_envelope(

@@ -58,6 +58,9 @@ STATUS_FLAGS = {
     STATUS_NOT_CONVERGED: "not_converged",
 }
 
+SHARES = ("stalled_share", "outside_polar_share", "low_reynolds_share", "above_divergence_share")
+"""Shares of the span that say how far a point can be trusted."""
+
 TRUST_NOT_RUN = 0
 TRUST_POOR = 1
 TRUST_FAIR = 2
@@ -79,7 +82,25 @@ TRUST_REASONS = {
     32: "flow_reversed",
     64: "not_converged",
     128: "section_guessed",
+    256: "descent",
+    512: "large_incidence",
+    1024: "outside_inflow_law",
 }
+
+SPOKEN_REASONS = {
+    "stalled": "stalled",
+    "outside_polars": "outside its section data",
+    "low_reynolds": "low Reynolds number",
+    "high_mach": "above the drag-divergence Mach number",
+    "several_roots": "several solutions at the stall",
+    "flow_reversed": "axial flow reversed, where momentum theory does not hold",
+    "not_converged": "not converged",
+    "section_guessed": "section guessed",
+    "descent": "descent, a mean-inflow estimate",
+    "large_incidence": "large incidence",
+    "outside_inflow_law": "the wake contracts too much for the helix inflow",
+}
+"""The reasons in words a reader meets."""
 
 WINDING_CEILING = 120.0
 """Winding temperature [degree Celsius] above which results are marked: enamel and magnets commonly stand 120 to 150
@@ -95,6 +116,14 @@ _SPEED = ("airspeed",)
 COORDINATES = (
     Quantity("rpm", "n", ("rpm",), "rpm", "rotational speed", "revolutions of the propeller per minute"),
     Quantity("advance_ratio", "J", ("advance_ratio",), "1", "advance ratio", "V/(nD) with n in revolutions per second"),
+    Quantity(
+        "incidence",
+        "i",
+        ("incidence",),
+        "degree",
+        "incidence",
+        "between flight path and shaft; as an angle of attack, so that air passes the disk from below to above",
+    ),
     Quantity("r_over_R", "r/R", ("r_over_R",), "1", "radius over tip radius", "middle of each blade element"),
     Quantity("airspeed", "V", ("airspeed",), "m s-1", "airspeed", "of the aircraft, along the propeller shaft"),
     Quantity("throttle", "", ("throttle",), "1", "throttle", "stick position, 0 to 1"),
@@ -135,7 +164,8 @@ TABLE = (
         _POINT,
         "1",
         "propeller efficiency",
-        "J CT/CP; 0 at J = 0, missing unless CT >= 0 and CP > 0",
+        "J CT/CP; 0 at J = 0, missing unless J >= 0, CT >= 0 and CP > 0; at incidence T V cos(i)/P, "
+        "from which the drag of the normal force is not taken",
     ),
     Quantity(
         "reference_reynolds",
@@ -145,7 +175,14 @@ TABLE = (
         "Reynolds number at 0.75 R",
         "rho c sqrt(V^2 + (0.75 pi n D)^2)/mu with the chord at 0.75 R",
     ),
-    Quantity("helical_tip_mach", "Mtip", _POINT, "1", "helical tip Mach number", "sqrt(V^2 + (pi n D)^2)/a"),
+    Quantity(
+        "helical_tip_mach",
+        "Mtip",
+        _POINT,
+        "1",
+        "helical tip Mach number",
+        "sqrt(V^2 + (pi n D)^2)/a; at incidence that of the advancing blade",
+    ),
     Quantity(
         "stalled_share",
         "",
@@ -169,6 +206,14 @@ TABLE = (
         "1",
         "share of the span below Reynolds number 60 000",
         "share of the span, weighted by r^2 chord, where section drag is uncertain by 30 % or more",
+    ),
+    Quantity(
+        "above_divergence_share",
+        "",
+        _POINT,
+        "1",
+        "share of the span above the drag-divergence Mach number",
+        "share of the span, weighted by r^2 chord, beyond Korn's kappa - t/c - |cl|/10 at its own lift and Mach number",
     ),
     Quantity("trust", "", _POINT, "1", "grade of trust", "made of the shares and the status of the point", TRUST_FLAGS),
     Quantity(
@@ -236,6 +281,51 @@ RADIAL = (
     Quantity("torque_loading", "dQ/dr", _RADIAL, "N", "torque per radius", "of all blades together"),
 )
 
+_INCLINED = (*_POINT, "incidence")
+
+INCIDENCE = (
+    Quantity(
+        "normal_force_coefficient",
+        "CN",
+        _INCLINED,
+        "1",
+        "normal force coefficient",
+        "N/(rho n^2 D^4); in the plane of the disk, positive up, which is where the crossflow goes",
+    ),
+    Quantity(
+        "side_force_coefficient",
+        "CY",
+        _INCLINED,
+        "1",
+        "side force coefficient",
+        "Y/(rho n^2 D^4); in the plane of the disk, positive to the right as seen from behind",
+    ),
+    Quantity(
+        "pitching_moment_coefficient",
+        "Cm",
+        _INCLINED,
+        "1",
+        "pitching moment coefficient",
+        "M/(rho n^2 D^5); about the hub, positive nose up",
+    ),
+    Quantity(
+        "yaw_moment_coefficient",
+        "Cn",
+        _INCLINED,
+        "1",
+        "yaw moment coefficient",
+        "N/(rho n^2 D^5); about the hub, positive nose to the right; "
+        "negative where a right-hand propeller pulls more at its right, down-going blade",
+    ),
+)
+
+# Where an incidence is asked for, everything of a point runs over it as well.
+TABLE_AT_INCIDENCE = (
+    *(replace(quantity, dimensions=_INCLINED) if quantity.dimensions == _POINT else quantity for quantity in TABLE),
+    *INCIDENCE,
+)
+RADIAL_AT_INCIDENCE = tuple(replace(quantity, dimensions=(*_INCLINED, "r_over_R")) for quantity in RADIAL)
+
 LOOKUP = (
     Quantity(
         "lookup_thrust",
@@ -249,6 +339,9 @@ LOOKUP = (
     Quantity("lookup_stalled_share", "", _LOOKUP, "1", "stalled share of the span", "as stalled_share"),
     Quantity("lookup_outside_polar_share", "", _LOOKUP, "1", "share outside polar data", "as outside_polar_share"),
     Quantity("lookup_low_reynolds_share", "", _LOOKUP, "1", "share below Re 60 000", "as low_reynolds_share"),
+    Quantity(
+        "lookup_above_divergence_share", "", _LOOKUP, "1", "share above drag divergence", "as above_divergence_share"
+    ),
     Quantity("lookup_status", "", _LOOKUP, "1", "status", "as status", STATUS_FLAGS),
 )
 
@@ -306,6 +399,14 @@ _OPERATING = (
         _GRID,
         "1",
         "share of the span below Reynolds number 60 000",
+        "of the propeller, weighted by r^2 chord",
+    ),
+    Quantity(
+        "above_divergence_share",
+        "",
+        _GRID,
+        "1",
+        "share of the span above the drag-divergence Mach number",
         "of the propeller, weighted by r^2 chord",
     ),
     Quantity("trust", "", _GRID, "1", "grade of trust", "of the propeller's loads at this point", TRUST_FLAGS),
@@ -403,6 +504,7 @@ _BARE_NAMES = (
     "outside_polar_share",
     "stalled_share",
     "low_reynolds_share",
+    "above_divergence_share",
     "trust",
     "trust_reasons",
     "status",

@@ -17,6 +17,7 @@ from bemt.quantities.dataset import attributes
 from bemt.quantities.registry import (
     COORDINATES,
     ENVELOPE,
+    SHARES,
     STATUS_NOT_CONVERGED,
     STATUS_NOT_RUN,
     TABLE,
@@ -116,7 +117,8 @@ class PropellerAccessor:
         slow = (reynolds < lookup.reynolds[0] * (1.0 - 1e-12)) & (speed > 0.0) & np.isfinite(loads.thrust)
         _warn(lookup, v, n, reynolds, speed / sound, loads.status, slow)
         status = np.where(slow, STATUS_NOT_RUN, loads.status).astype(np.int16)
-        thrust, torque, stalled, outside, low = (np.where(slow, np.nan, array) for array in loads[:5])
+        thrust, torque = np.where(slow, np.nan, loads.thrust), np.where(slow, np.nan, loads.torque)
+        shares = {name: np.where(slow, np.nan, getattr(loads, name)) for name in SHARES}
 
         turns = n / 60.0
         scale = np.where(turns > 0.0, rho * turns**2 * lookup.diameter**4, np.nan)
@@ -126,9 +128,7 @@ class PropellerAccessor:
         tip_mach = np.hypot(v, math.pi * turns * lookup.diameter) / sound
         trust, reasons = grade(
             status,
-            stalled,
-            outside,
-            low,
+            shares,
             tip_mach - lookup.tip_divergence_mach,
             section_guessed=lookup.section_guessed,
         )
@@ -142,9 +142,7 @@ class PropellerAccessor:
             "efficiency": efficiency(ratio, ct, cp),
             "reference_reynolds": reynolds,
             "helical_tip_mach": tip_mach,
-            "stalled_share": stalled,
-            "outside_polar_share": outside,
-            "low_reynolds_share": low,
+            **shares,
             "trust": trust,
             "trust_reasons": reasons,
             "status": status,

@@ -16,16 +16,17 @@ def efficiency(advance_ratio: ArrayLike, thrust_coefficient: ArrayLike, power_co
     Parameters
     ----------
     advance_ratio, thrust_coefficient, power_coefficient : array_like
-        J, CT and CP, broadcast against each other.
+        J, CT and CP, broadcast against each other. At incidence J of the airspeed along the shaft.
 
     Returns
     -------
     numpy.ndarray
-        J CT/CP; NaN unless CT >= 0 and CP > 0.
+        J CT/CP; NaN unless J >= 0, CT >= 0 and CP > 0.
     """
     ct, cp = np.asarray(thrust_coefficient), np.asarray(power_coefficient)
-    propels = (ct >= 0.0) & (cp > 0.0)
-    found: FloatArray = np.where(propels, advance_ratio * ct, np.nan) / np.where(propels, cp, 1.0)
+    ratio = np.asarray(advance_ratio)
+    propels = (ct >= 0.0) & (cp > 0.0) & (ratio >= 0.0)
+    found: FloatArray = np.where(propels, ratio * ct, np.nan) / np.where(propels, cp, 1.0)
     return found
 
 

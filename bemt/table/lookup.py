@@ -19,6 +19,7 @@ from bemt.air import Air
 from bemt.errors import InputError
 from bemt.interpolation import monotone_slopes
 from bemt.quantities.registry import (
+    SHARES,
     STATUS_CONVERGED,
     STATUS_NOT_CONVERGED,
     STATUS_NOT_RUN,
@@ -40,7 +41,7 @@ METHOD = (
 )
 """How values between the nodes are meant, for readers of a file."""
 
-TABLES = ("thrust", "torque", "stalled_share", "outside_polar_share", "low_reynolds_share", "status")
+TABLES = ("thrust", "torque", *SHARES, "status")
 """Arrays of a look-up; in a dataset their names begin with `lookup_`."""
 
 _SLOWEST_SQUARE = 1e-200  # keeps the logarithm of a Reynolds number finite at rest
@@ -53,7 +54,7 @@ class LookupLoads(NamedTuple):
     ----------
     thrust, torque : numpy.ndarray
         [N], [N m] taken from the shaft; NaN outside the table.
-    stalled_share, outside_polar_share, low_reynolds_share : numpy.ndarray
+    stalled_share, outside_polar_share, low_reynolds_share, above_divergence_share : numpy.ndarray
         Shares of the span, weighted by r^2 chord; NaN outside the table.
     status : numpy.ndarray of int16
         Codes of the registry, the worst of the nodes around; "not run" outside the table.
@@ -64,6 +65,7 @@ class LookupLoads(NamedTuple):
     stalled_share: FloatArray
     outside_polar_share: FloatArray
     low_reynolds_share: FloatArray
+    above_divergence_share: FloatArray
     status: StatusArray
 
 
@@ -81,8 +83,8 @@ class Lookup:
         atan2(V, 0.75 pi n D) [rad], ascending.
     thrust, torque : numpy.ndarray, shape (n_mach, n_re, n_helix)
         T/(rho U^2 D^2) and Q/(rho U^2 D^3); NaN where the solution did not converge.
-    stalled_share, outside_polar_share, low_reynolds_share : numpy.ndarray, shape (n_mach, n_re, n_helix)
-        Shares of the span.
+    stalled_share, outside_polar_share, low_reynolds_share, above_divergence_share : numpy.ndarray
+        Shares of the span, shape (n_mach, n_re, n_helix).
     status : numpy.ndarray of int16, shape (n_mach, n_re, n_helix)
         Codes of the registry.
     diameter : float
@@ -110,6 +112,7 @@ class Lookup:
     stalled_share: FloatArray
     outside_polar_share: FloatArray
     low_reynolds_share: FloatArray
+    above_divergence_share: FloatArray
     status: StatusArray
     diameter: float
     chord_75: float
@@ -137,8 +140,8 @@ class Lookup:
             if getattr(self, name).shape != shape:
                 raise InputError(f"lookup_{name}", f"shape {getattr(self, name).shape} does not fit the axes {shape}")
         unsolved = np.isnan(self.thrust) | np.isnan(self.torque)
-        shares = np.stack([self.stalled_share, self.outside_polar_share, self.low_reynolds_share], axis=-1)
-        # Of each cell: thrust and torque in turn for every power of t, then three shares and their rises.
+        shares = np.stack([getattr(self, name) for name in SHARES], axis=-1)
+        # Of each cell: thrust and torque in turn for every power of t, then the shares and their rises.
         forces = [_cubics(self.helix_angle, _bridged(self.helix_angle, array)) for array in (self.thrust, self.torque)]
         cubics = np.stack(forces, axis=-1).reshape(*forces[0].shape[:-1], 8)
         cells = np.concatenate([cubics, shares[:, :, :-1], np.diff(shares, axis=2)], axis=-1)
@@ -250,7 +253,7 @@ class Lookup:
         forces = mixed[6:8]
         for k in (4, 2, 0):
             forces = forces * t + mixed[k : k + 2]
-        shares = mixed[8:11] + mixed[11:14] * t
+        shares = mixed[8 : 8 + len(SHARES)] + mixed[8 + len(SHARES) :] * t
         pressure = square * (density * self.diameter**2)
         forces *= pressure
         thrust, torque = forces[0], forces[1] * self.diameter
@@ -318,8 +321,10 @@ class Lookup:
         Raises
         ------
         InputError
-            If the dataset has no look-up table.
+            If the dataset has no look-up table, or is of an inflow law that has none.
         """
+        if dataset.attrs.get("inflow", "momentum") != "momentum":
+            raise no_lookup(str(dataset.attrs["inflow"]))
         names = [f"lookup_{name}" for name in TABLES]
         missing = [name for name in names if name not in dataset]
         missing += [name for name in _ATTRIBUTES if name not in dataset.attrs]
@@ -340,6 +345,26 @@ class Lookup:
             tip_divergence_mach=number["tip_divergence_mach"],
             section_guessed=bool(number["section_guessed"]),
         )
+
+
+def no_lookup(inflow: str) -> InputError:
+    """Return what to say where a look-up table is asked of an inflow law that has none.
+
+    Parameters
+    ----------
+    inflow : str
+        The law.
+
+    Returns
+    -------
+    InputError
+        To be raised.
+    """
+    return InputError(
+        "model.inflow",
+        f'"{inflow}" serves tables of moving air only: a look-up, and with it the envelope, has to reach from standing '
+        'still to a stopped propeller; use inflow = "momentum"',
+    )
 
 
 _ATTRIBUTES = (
