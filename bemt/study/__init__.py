@@ -1,0 +1,1 @@
+"""Many solutions made into one answer."""
