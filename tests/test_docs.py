@@ -98,7 +98,8 @@ def commands(page: Path) -> list[str]:
 
 
 def workplace(folder: Path) -> None:
-    shutil.copytree(ROOT / "cases", folder / "cases")
+    for data in ("cases", "tests/measured"):
+        shutil.copytree(ROOT / data, folder / data)
 
 
 @pytest.fixture(scope="module")
@@ -121,7 +122,7 @@ def outputs(tmp_path_factory: pytest.TempPathFactory) -> dict[str, str]:
 
 
 def test_the_commands_of_the_pages_run(outputs: dict[str, str]) -> None:
-    assert {line.split()[1] for line in outputs} == {"start", "check", "table", "envelope"}
+    assert {line.split()[1] for line in outputs} == {"start", "check", "table", "envelope", "compare"}
 
 
 def test_numbers_quoted_in_the_readme_are_those_that_are_printed(outputs: dict[str, str]) -> None:

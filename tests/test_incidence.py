@@ -345,7 +345,10 @@ def test_a_table_at_incidence_gains_the_axis() -> None:
     )
     ratio = RATIOS[:, None] * np.cos(ANGLES_ASKED)
     ct, cp = table["thrust_coefficient"].values, table["power_coefficient"].values
-    np.testing.assert_allclose(table["efficiency"].values, ratio * ct / cp, rtol=1e-12)
+    # What propels is the force along the flight path; where that is a drag there is no efficiency.
+    along = ct * np.cos(ANGLES_ASKED) - table["normal_force_coefficient"].values * np.sin(ANGLES_ASKED)
+    expected = np.where(along >= 0.0, RATIOS[:, None] * along / cp, np.nan)
+    np.testing.assert_allclose(table["efficiency"].values, expected, rtol=1e-9, atol=1e-15)
     advancing = math.pi * case.propeller.diameter * n * (1.0 + RATIOS[:, None] / math.pi * np.sin(ANGLES_ASKED))
     through = ratio * n * case.propeller.diameter
     mach = np.hypot(advancing, through) / case.air.speed_of_sound

@@ -280,7 +280,7 @@ def coefficient_figure(table: xr.Dataset) -> Figure:
             left,
             0.14 / height,
             "$J = V/(nD)$,  $C_T = T/(ρn^2D^4)$,  $C_P = P/(ρn^3D^5)$,  "
-            + (r"$η = J\,\cos i\;C_T/C_P$" if "incidence" in table.dims else "$η = J C_T/C_P$")
+            + (r"$η = J\,(C_T \cos i - C_N \sin i)/C_P$" if "incidence" in table.dims else "$η = J C_T/C_P$")
             + ",  n in rev/s",
             fontsize=8, color=QUIET, va="center",
         )  # fmt: skip

@@ -154,7 +154,8 @@ def coefficient_text(table: xr.Dataset) -> str:
     ]
     if inclined:
         lines += [
-            "At incidence i, V along the flight path: eta = J cos(i) CT/CP; FM, J0 and the peak are of axial flow.",
+            "At incidence i, V along the flight path: eta = J (CT cos(i) - CN sin(i))/CP; FM, J0 and the peak are of",
+            "axial flow.",
             "In the plane of the disk CN up, CY to the right; about the hub Cm nose up, Cn nose right: by rho n^2 D^4",
             "and rho n^2 D^5, seen from behind, the air passing the disk from below to above.",
         ]

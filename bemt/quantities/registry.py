@@ -164,8 +164,8 @@ TABLE = (
         _POINT,
         "1",
         "propeller efficiency",
-        "J CT/CP; 0 at J = 0, missing unless J >= 0, CT >= 0 and CP > 0; at incidence T V cos(i)/P, "
-        "from which the drag of the normal force is not taken",
+        "J CT/CP; 0 at J = 0, missing unless J >= 0, CT >= 0 and CP > 0; at incidence with the force along the flight "
+        "path, CT cos(i) - CN sin(i), in place of CT",
     ),
     Quantity(
         "reference_reynolds",

@@ -182,9 +182,7 @@ def build_table(
     )
     values: dict[str, NDArray[Any]] = {
         **points.values,
-        "efficiency": efficiency(
-            advance_ratio * np.cos(incidence), points.thrust_coefficient, points.power_coefficient
-        ),
+        "efficiency": efficiency(advance_ratio, _along_flight_path(points, incidence), points.power_coefficient),
         "reference_reynolds": np.hypot(points.airspeed, REFERENCE_RADIUS * tip_speed)
         * elements.chord_75
         / air.kinematic_viscosity,
@@ -194,7 +192,7 @@ def build_table(
         **marks,
     }
     for name in _MIRRORED if grid.inclined and propeller.rotation == "left" else ():
-        values[name] = -values[name]
+        values[name] = 0.0 - values[name]  # without a minus before zero
     return TableResult(
         rpm=grid.rpm,
         advance_ratio=grid.advance_ratio,
@@ -205,6 +203,13 @@ def build_table(
         inflow=model.inflow,
         notes=notes,
     )
+
+
+def _along_flight_path(points: Points, incidence: FloatArray) -> FloatArray:
+    """Coefficient of the force that propels: thrust less the drag of the normal force."""
+    normal = points.values.get("normal_force_coefficient", 0.0)
+    found: FloatArray = points.thrust_coefficient * np.cos(incidence) - normal * np.sin(incidence)
+    return found
 
 
 def _notes(elements: BladeElements, propeller: Propeller, grid: Grid) -> tuple[str, ...]:

@@ -16,7 +16,7 @@ def efficiency(advance_ratio: ArrayLike, thrust_coefficient: ArrayLike, power_co
     Parameters
     ----------
     advance_ratio, thrust_coefficient, power_coefficient : array_like
-        J, CT and CP, broadcast against each other. At incidence J of the airspeed along the shaft.
+        J, CT and CP, broadcast against each other. At incidence CT of the force along the flight path.
 
     Returns
     -------
