@@ -273,7 +273,7 @@ def _columns_of(
             else:
                 name, factor, offset = _column_of(heading, columns)
             if name in (known for known, *_ in found):
-                raise ValueError("this column is there twice")
+                raise ValueError("an earlier column gives the same quantity; give it once")
             found.append((name, factor, offset))
     return found
 

@@ -1412,16 +1412,15 @@ def _lanes_finish(n, w, index, bounds):
         w[_W_TORQUE + i] = pressure * (lift * s + drag * c) * w[_W_RADIUS + i]
         stalled = alpha > w[_W_STALL_HIGH + i] or alpha < w[_W_STALL_LOW + i]
         w[_W_STALLED + i] = 1.0 if stalled else 0.0
-        ln_re = w[_W_LN_RE + i]
-        outside = alpha > w[_W_DATA_HIGH + i] or alpha < w[_W_DATA_LOW + i]
-        outside = outside or ln_re < w[_W_LN_RE_LOW + i] or ln_re > w[_W_LN_RE_HIGH + i]
-        w[_W_OUTSIDE + i] = 1.0 if outside else 0.0
-        w[_W_LOW_RE + i] = 1.0 if ln_re < _LN_60000 else 0.0
         mach = w[_W_MACH_0 + i] * ratio
         divergence = max(w[_W_DIVERGENCE + i] - 0.1 * min(abs(lift), 2.0), LOWEST_DIVERGENCE)
         w[_W_DIVERGED + i] = 1.0 if mach > divergence else 0.0
-        if mach < w[_W_MACH_LOW + i] or mach > w[_W_MACH_HIGH + i]:
-            w[_W_OUTSIDE + i] = 1.0
+        ln_re = w[_W_LN_RE + i]
+        outside = alpha > w[_W_DATA_HIGH + i] or alpha < w[_W_DATA_LOW + i]
+        outside = outside or mach < w[_W_MACH_LOW + i] or mach > w[_W_MACH_HIGH + i]
+        outside = outside or ln_re < w[_W_LN_RE_LOW + i] or ln_re > w[_W_LN_RE_HIGH + i]
+        w[_W_OUTSIDE + i] = 1.0 if outside else 0.0
+        w[_W_LOW_RE + i] = 1.0 if ln_re < _LN_60000 else 0.0
 
 
 @_jit
