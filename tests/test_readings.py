@@ -141,7 +141,7 @@ WRONG: dict[str, tuple[str, int, str, str]] = {
     "wrong unit": ("rpm,torque_N\n6000,4\n", 1, "torque_N", "measure a torque"),
     "no rpm": ("thrust_N\n4\n", 1, "rpm", "missing"),
     "rpm twice": ("rpm,electrical_rpm,pole_pairs,thrust_N\n6000,42000,7,4\n", 1, "electrical_rpm", "same as rpm"),
-    "thrust twice": ("rpm,thrust_N,thrust_gf\n6000,4,400\n", 1, "thrust_gf", "twice"),
+    "thrust twice": ("rpm,thrust_N,thrust_gf\n6000,4,400\n", 1, "thrust_gf", "the same quantity"),
     "thrust as force and coefficient": (
         "rpm,thrust_N,thrust_coefficient\n6000,4,0.1\n", 1, "thrust_coefficient", "same as thrust_N",
     ),
