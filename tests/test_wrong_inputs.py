@@ -47,7 +47,7 @@ WRONG: dict[str, tuple[str, dict[str, str | bytes], str, int | None, str, str]] 
     "column with a wrong unit": (
         CASE, {"blade.csv": BLADE.replace("chord_mm", "chord_kg")}, "blade.csv", 1, "chord_kg", "measure a length",
     ),
-    "column twice": (CASE, {"blade.csv": BLADE.replace("t_over_c", "chord_cm")}, "blade.csv", 1, "chord_cm", "same quantity"),
+    "column twice": (CASE, {"blade.csv": BLADE.replace("t_over_c", "chord_cm")}, "blade.csv", 1, "chord_cm", "same"),
     "radius both ways": (
         CASE, {"blade.csv": BLADE.replace("t_over_c", "r_over_R")}, "blade.csv", 1, "radius_mm", "not both",
     ),
