@@ -27,6 +27,16 @@ SECTION_GUESSED = (
     "Give the section if you know it."
 )
 
+MOTOR_GUESSED = (
+    "of the motor only Kv is known; guessed: {guessed}, from memory of motors of its kind, each uncertain by "
+    "{band:.0f} % or more. Currents, losses and the winding's heat are no better than that. "
+    "Measure both: bemt calibrate finds them from a bench."
+)
+MOTOR_DOUBTED = (
+    'the motor does not look like its label "{label}": {doubt}. From memory of common motors, and crude; some makers '
+    "print the size of the can instead of the stator. Check the values."
+)
+
 DEFAULT_ADVANCE_RATIOS = 45
 _DEFAULT_RPMS = 4
 DEFAULT_TIP_MACH = 0.6

@@ -9,6 +9,8 @@ import numpy as np
 
 from bemt.case.load import Case
 from bemt.case.pitch import chord_line_angle, pitch_over_diameter
+from bemt.drive.motor import RESISTANCE_TEMPERATURE
+from bemt.flight.airframe import Airframe, Multirotor
 from bemt.rotor.elements import blade_elements
 from bemt.section.family import family
 
@@ -136,7 +138,9 @@ def _motor(case: Case) -> list[str]:
     motor = case.motor
     if motor is None:
         return []
-    words = f"{motor.count} x {motor.speed_constant * _RPM:.4g} rpm/V, {motor.winding_resistance * 1e3:.4g} mohm"
+    words = f"{motor.count} x {motor.speed_constant * _RPM:.4g} rpm/V, {motor.resistance * 1e3:.4g} mohm"
+    if motor.winding_temperature != RESISTANCE_TEMPERATURE:
+        words += f" at {motor.winding_temperature - 273.15:.4g} degC"
     if motor.gear_ratio != 1.0:
         words += f", gear {motor.gear_ratio:g} to 1"
     return [words + (f", limit {motor.current_limit:g} A" if motor.current_limit else ", no current limit given")]
@@ -158,7 +162,8 @@ def _battery(case: Case) -> list[str]:
     return [
         (
             f"{battery.cells_in_series} in series, {battery.cells_in_parallel} in parallel, {battery.chemistry}, "
-            f"{battery.capacity / 3600:.4g} A h, {battery.open_circuit_voltage:.1f} V at rest, {limit}"
+            f"{battery.capacity / 3600:.4g} A h, {battery.open_circuit_voltage:.1f} V at rest, "
+            f"{battery.resistance * 1e3:.3g} mohm at {battery.temperature - 273.15:.4g} degC, {limit}"
         )
     ]
 
@@ -168,6 +173,9 @@ def _airframe(case: Case) -> list[str]:
     if airframe is None:
         return []
     words = f"{airframe.mass:g} kg"
+    if isinstance(airframe, Multirotor):
+        known = "drag of the climb from a table" if airframe.drag_table else "no drag of the climb given"
+        return [f"{words}, hovering, {known}"]
     if airframe.wing_area is not None:
         words += f", wing {airframe.wing_area:g} m2"
     stall = airframe.stall_speed(case.air.density)
@@ -191,6 +199,6 @@ def _readiness(case: Case) -> list[str]:
     lines.append(f"bemt envelope: {words}")
     if case.airframe is None:
         lines.append("level flight and its named points need [airframe]; standing still is given")
-    elif case.airframe.cruise_speed is None:
+    elif isinstance(case.airframe, Airframe) and case.airframe.cruise_speed is None:
         lines.append('the point "cruise" needs airframe.cruise_speed')
     return lines

@@ -25,6 +25,8 @@ from bemt.case.defaults import (
     GUESSED_DRAG_SCALE,
     GUESSED_FAMILY,
     GUESSED_THICKNESS,
+    MOTOR_DOUBTED,
+    MOTOR_GUESSED,
     SECTION_GUESSED,
     default_advance_ratio_end,
     default_rpm,
@@ -35,8 +37,11 @@ from bemt.case.schema import check_keys, unknown_keys
 from bemt.case.sweep import check_sweep
 from bemt.case.tables import decode, read_drag, read_polars, read_stations, read_text
 from bemt.drive import Battery, Controller, Motor
+from bemt.drive.battery import RESISTANCE_TEMPERATURE as CELL_AT
+from bemt.drive.label import GUESS_BAND, NO_LOAD_VOLTAGE, Stator, doubts, guessed_no_load_current, guessed_resistance
+from bemt.drive.motor import RESISTANCE_TEMPERATURE as COPPER_AT
 from bemt.errors import CaseError, InputError
-from bemt.flight.airframe import Airframe, Installation
+from bemt.flight.airframe import Airframe, Installation, Multirotor
 from bemt.rotor.model import Model
 from bemt.section.family import family
 from bemt.section.polar import PolarTable
@@ -52,10 +57,6 @@ _LATER_KEYS: dict[tuple[str, str], tuple[str, str]] = {
     ("propeller", "pitch"): ("a blade from its label", "give the measured stations"),
     ("propeller", "outline"): ("a blade from its label", "give the measured stations"),
     ("section", "shape"): ("a section by its shape", "use polars or family"),
-}
-_LATER_VALUES: dict[tuple[str, ...], tuple[object, str]] = {
-    ("motor", "label_only"): (True, "measure winding_resistance and one no_load reading"),
-    ("airframe", "hover"): (True, "give a wing, or leave [airframe] out"),
 }
 # Keys the schema leaves open because a later key can stand in for them.
 _NEEDED: dict[tuple[str, str], tuple[tuple[str, ...], str]] = {
@@ -116,7 +117,7 @@ class Case:
     motor: Motor | None = None
     controller: Controller | None = None
     battery: Battery | None = None
-    airframe: Airframe | None = None
+    airframe: Airframe | Multirotor | None = None
     installation: Installation | None = None
     notes: tuple[str, ...] = ()
     notices: tuple[str, ...] = ()
@@ -272,14 +273,6 @@ class _Loader:
             for path, table in self.tables(section):
                 if key in table:
                     self.complain((*path, key), f"{what} {_LATER}; {instead}")
-        for (section, *keys), (refused, instead) in _LATER_VALUES.items():
-            for path, table in self.tables(section):
-                value: Any = table
-                for key in keys:
-                    value = value.get(key) if isinstance(value, dict) else None
-                if value == refused and type(value) is type(refused):
-                    shown = f'"{value}"' if isinstance(value, str) else "true"
-                    self.complain((*path, *keys), f"{shown} {_LATER}; {instead}")
         if "correction" in self.document:
             self.complain(("correction",), f"{_LATER}; remove this section: its numbers would not be applied")
         return len(self.complaints) == before
@@ -476,28 +469,63 @@ class _Loader:
     def motor(self, section: models.MotorSection | None) -> Motor | None:
         if section is None:
             return None
-        if section.winding_resistance is None or section.no_load is None:
+        resistance, no_load = section.winding_resistance, section.no_load
+        controller = self.document.get("controller")
+        if section.winding_inductance and not (isinstance(controller, dict) and "switching_frequency" in controller):
+            self.complain(
+                ("motor", "winding_inductance"), "needs switching_frequency in [controller]: the ripple comes from both"
+            )
+        if not section.label_only and (resistance is None or no_load is None):
             return None
         with self.about(("motor",)):
-            return Motor(
+            stator = None if section.label is None else Stator.of(section.label)
+            guessed = []
+            if resistance is None:
+                resistance = guessed_resistance(section.speed_constant, stator)
+                guessed.append(f"winding resistance {resistance * 1e3:.3g} mohm")
+            if no_load is None:
+                current = guessed_no_load_current(section.speed_constant)
+                readings: tuple[tuple[float, float], ...] = ((NO_LOAD_VOLTAGE, current),)
+                guessed.append(f"no-load current {current:.2g} A")
+            else:
+                readings = tuple((reading.voltage, reading.current) for reading in no_load)
+            motor = Motor(
                 speed_constant=section.speed_constant,
-                winding_resistance=section.winding_resistance,
-                no_load=tuple((reading.voltage, reading.current) for reading in section.no_load),
+                winding_resistance=resistance,
+                no_load=readings,
                 count=section.count,
                 current_limit=section.current_limit,
+                winding_temperature=section.winding_temperature or COPPER_AT,
+                winding_inductance=section.winding_inductance,
                 thermal_resistance=section.thermal_resistance,
                 gear_ratio=section.gear_ratio,
                 gear_efficiency=section.gear_efficiency,
             )
+            if guessed:
+                self.notes.append(MOTOR_GUESSED.format(guessed=" and ".join(guessed), band=100.0 * GUESS_BAND))
+            if stator is not None:
+                doubted = doubts(motor, stator, resistance_guessed=section.winding_resistance is None)
+                self.notes += [MOTOR_DOUBTED.format(label=section.label, doubt=doubt) for doubt in doubted]
+            return motor
         return None
 
     def controller(self, section: models.ControllerSection | None) -> Controller | None:
         if section is None:
             return None
         frequency, time = section.switching_frequency, section.switching_time
-        if (frequency is None) != (time is None):
-            given, missing = ("switching_frequency", "switching_time")[:: 1 if time is None else -1]
-            self.complain(("controller", given), f"needs {missing} beside it: the switching loss comes from both")
+        motor = self.document.get("motor")
+        inductance = isinstance(motor, dict) and "winding_inductance" in motor
+        if time is None and frequency is not None and not inductance:
+            self.complain(
+                ("controller", "switching_frequency"),
+                "needs switching_time beside it for the switching loss, or winding_inductance in [motor] for ripple",
+            )
+            return None
+        if time is not None and frequency is None:
+            self.complain(
+                ("controller", "switching_time"),
+                "needs switching_frequency beside it: the switching loss comes from both",
+            )
             return None
         with self.about(("controller",)):
             return Controller(
@@ -507,6 +535,7 @@ class _Loader:
                 unpowered=section.unpowered,
                 switching_frequency=frequency,
                 switching_time=time,
+                diode_voltage=section.diode_voltage,
                 throttle_map=tuple((stick, duty) for stick, duty in section.throttle_map),
             )
         return None
@@ -524,12 +553,15 @@ class _Loader:
                 discharge_multiple=section.discharge_multiple,
                 charge_left=section.charge_left,
                 usable_share=section.usable_share,
+                temperature=section.temperature or CELL_AT,
             )
         return None
 
-    def airframe(self, section: models.AirframeSection | None) -> Airframe | None:
+    def airframe(self, section: models.AirframeSection | None) -> Airframe | Multirotor | None:
         if section is None:
             return None
+        if section.hover:
+            return self.multirotor(section)
         if section.drag is None:
             return None
         drag: dict[str, Any] = {}
@@ -548,6 +580,26 @@ class _Loader:
                 cruise_speed=section.cruise_speed,
                 **drag,
             )
+        return None
+
+    def multirotor(self, section: models.AirframeSection) -> Multirotor | None:
+        before = len(self.complaints)
+        for key in ("wing_area", "cl_max", "cruise_speed"):
+            if getattr(section, key) is not None:
+                self.complain(("airframe", key), "conflicts with hover = true: a hovering airframe has no wing")
+        table = None
+        if isinstance(section.drag, models.ParabolicDrag):
+            self.complain(
+                ("airframe", "drag"),
+                "cd0 and k belong to a wing; with hover = true give a CSV file of airspeed_m_s and drag_N of the "
+                "vertical climb, or leave drag out",
+            )
+        elif section.drag is not None and self.finds(("airframe", "drag"), section.drag):
+            table = read_drag(self.folder / section.drag, self.label(section.drag), self.complaints)
+        if len(self.complaints) > before:
+            return None
+        with self.about(("airframe",)):
+            return Multirotor(mass=section.mass, drag_table=table)
         return None
 
     def installation(self, section: models.InstallationSection | None) -> Installation | None:

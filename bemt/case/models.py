@@ -17,6 +17,7 @@ from bemt.case.units import (
     CURRENT,
     DENSITY,
     FREQUENCY,
+    INDUCTANCE,
     LENGTH,
     MASS,
     PRESSURE,
@@ -53,10 +54,12 @@ Pressure = Annotated[float, Measured(PRESSURE, above=0.0)]
 Density = Annotated[float, Measured(DENSITY, above=0.0)]
 Viscosity = Annotated[float, Measured(VISCOSITY, above=0.0)]
 Voltage = Annotated[float, Measured(VOLTAGE, above=0.0)]
+VoltageOrZero = Annotated[float, Measured(VOLTAGE, at_least=0.0)]
 Current = Annotated[float, Measured(CURRENT, above=0.0)]
 CurrentOrZero = Annotated[float, Measured(CURRENT, at_least=0.0)]
 Resistance = Annotated[float, Measured(RESISTANCE, above=0.0)]
 ResistanceOrZero = Annotated[float, Measured(RESISTANCE, at_least=0.0)]
+Inductance = Annotated[float, Measured(INDUCTANCE, above=0.0)]
 Charge = Annotated[float, Measured(CHARGE, above=0.0)]
 ThermalResistance = Annotated[float, Measured(THERMAL_RESISTANCE, above=0.0)]
 
@@ -216,6 +219,9 @@ class MotorSection(Section):
     winding_resistance: Resistance | None = None
     no_load: Annotated[list[NoLoadReading], Field(min_length=1)] | None = None
     label_only: bool = False
+    label: Annotated[str, Field(min_length=1)] | None = None
+    winding_temperature: Temperature | None = None
+    winding_inductance: Inductance | None = None
     thermal_resistance: ThermalResistance | None = None
     current_limit: Current | None = None
     gear_ratio: Positive = 1.0
@@ -230,6 +236,7 @@ class ControllerSection(Section):
     unpowered: Literal["freewheel", "regenerate", "brake"] = "freewheel"
     switching_frequency: Frequency | None = None
     switching_time: Time | None = None
+    diode_voltage: VoltageOrZero = 0.0
     idle_current: CurrentOrZero = 0.0
     throttle_map: Annotated[list[Annotated[list[Share], Field(min_length=2, max_length=2)]], Field(min_length=2)] = [
         [0.0, 0.0],
@@ -248,6 +255,7 @@ class BatterySection(Section):
     discharge_multiple: Positive | None = None
     charge_left: Share = 1.0
     usable_share: Share = 0.8
+    temperature: Temperature | None = None
 
 
 class ParabolicDrag(Section):

@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from bemt.errors import InputError
 from bemt.quantities.checks import (
     require_count,
     require_not_negative,
@@ -29,6 +31,12 @@ OPEN_CIRCUIT_VOLTAGE: dict[str, tuple[tuple[float, ...], tuple[float, ...]]] = {
 }
 CHEMISTRIES = tuple(OPEN_CIRCUIT_VOLTAGE)
 
+# Resistance over temperature as exp(B (1/T - 1/T0)), Arrhenius's law. B doubles the resistance from 20 to 0 degrees
+# Celsius: from memory, typical of both chemistries; single makes range from a half more to thrice.
+RESISTANCE_TEMPERATURE = 293.15  # K, at which the cell resistance is stated
+RESISTANCE_GROWTH = 2775.0  # K
+_COLDEST, _HOTTEST = 233.15, 343.15  # K
+
 
 @dataclass(frozen=True)
 class Battery:
@@ -39,7 +47,7 @@ class Battery:
     cells_in_series : int
         Cells that add their voltages.
     cell_resistance : float
-        Direct-current resistance of one cell [ohm].
+        Direct-current resistance of one cell at 20 degrees Celsius [ohm].
     capacity : float
         Charge of the full pack [C]; 1 A h is 3600 C.
     cells_in_parallel : int
@@ -52,6 +60,8 @@ class Battery:
         Share of the capacity at which voltages and currents are computed, 0 to 1.
     usable_share : float
         Share of the capacity that may be used; the rest stays in the pack.
+    temperature : float
+        Of the cells [K], -40 to 70 degrees Celsius; the resistance grows in the cold, the capacity is left alone.
 
     Raises
     ------
@@ -67,6 +77,7 @@ class Battery:
     discharge_multiple: float | None = None
     charge_left: float = 1.0
     usable_share: float = 0.8
+    temperature: float = RESISTANCE_TEMPERATURE
 
     def __post_init__(self) -> None:
         """Refuse values that describe no pack."""
@@ -79,11 +90,17 @@ class Battery:
             require_positive("discharge_multiple", self.discharge_multiple)
         require_share("charge_left", self.charge_left)
         require_share("usable_share", self.usable_share)
+        require_positive("temperature", self.temperature, "K")
+        if not _COLDEST <= self.temperature <= _HOTTEST:
+            raise InputError(
+                "temperature", f"{self.temperature - 273.15:.4g} degC is not that of a working cell, -40 to 70 degC"
+            )
 
     @property
     def resistance(self) -> float:
-        """Resistance of the pack [ohm]."""
-        return self.cell_resistance * self.cells_in_series / self.cells_in_parallel
+        """Resistance of the pack at its temperature [ohm]."""
+        growth = math.exp(RESISTANCE_GROWTH * (1.0 / self.temperature - 1.0 / RESISTANCE_TEMPERATURE))
+        return self.cell_resistance * growth * self.cells_in_series / self.cells_in_parallel
 
     @property
     def open_circuit_voltage(self) -> float:
@@ -96,9 +113,19 @@ class Battery:
         return None if self.discharge_multiple is None else self.discharge_multiple * self.capacity / 3600.0
 
     @property
+    def lowest_charge(self) -> float:
+        """Share of the capacity that has to stay in the pack."""
+        return 1.0 - self.usable_share
+
+    @property
+    def largest_power(self) -> float:
+        """Largest power at the terminals at the charge left, Voc^2/(4 R) [W]; infinite without resistance."""
+        return self.open_circuit_voltage**2 / (4.0 * self.resistance) if self.resistance > 0.0 else math.inf
+
+    @property
     def usable_charge(self) -> float:
         """Charge that may still be taken [C]: what is left, less the part that has to stay in the pack."""
-        return self.capacity * max(self.charge_left - (1.0 - self.usable_share), 0.0)
+        return self.capacity * max(self.charge_left - self.lowest_charge, 0.0)
 
 
 def cell_voltage(chemistry: str, charge_left: ArrayLike) -> NDArray[np.float64]:
@@ -124,3 +151,28 @@ def cell_voltage(chemistry: str, charge_left: ArrayLike) -> NDArray[np.float64]:
     require_one_of("chemistry", chemistry, CHEMISTRIES)
     shares, voltages = OPEN_CIRCUIT_VOLTAGE[chemistry]
     return np.interp(np.asarray(charge_left, dtype=np.float64), shares, voltages)
+
+
+def charge_at_voltage(chemistry: str, voltage: ArrayLike) -> NDArray[np.float64]:
+    """Return the charge left at which a cell has an open-circuit voltage: the inverse of `cell_voltage`.
+
+    Parameters
+    ----------
+    chemistry : {"lithium-polymer", "lithium-ion"}
+        Names the curve.
+    voltage : array_like
+        Of one cell [V].
+
+    Returns
+    -------
+    numpy.ndarray
+        Share of the charge; 0 below the curve, infinite above it.
+
+    Raises
+    ------
+    InputError
+        If the chemistry is not known.
+    """
+    require_one_of("chemistry", chemistry, CHEMISTRIES)
+    shares, voltages = OPEN_CIRCUIT_VOLTAGE[chemistry]
+    return np.interp(np.asarray(voltage, dtype=np.float64), voltages, shares, left=0.0, right=np.inf)

@@ -17,8 +17,9 @@ UNPOWERED = ("freewheel", "regenerate", "brake")
 class Controller:
     """A controller by its resistance, idle current and what it does when the wind drives the motor.
 
-    With duty d, motor current I, battery voltage Vb: motor voltage d Vb - I Ron; current drawn from the battery
-    d I + I_idle, and while it chops also 1/2 |I| t f for switching.
+    With duty d, motor current I, battery voltage Vb: motor voltage d Vb - I Ron, less (1 - d) Vd where a diode
+    freewheels; current drawn from the battery d I + I_idle, and while it chops also 1/2 |I| t f for switching and what
+    the ripple costs.
 
     Parameters
     ----------
@@ -33,16 +34,18 @@ class Controller:
         back into the battery; or no current flows back, but at duty zero the leads are shorted. At duty zero the second
         and the third are the same circuit.
     switching_frequency : float, optional
-        f [Hz]; switching loss needs it and the time.
+        f [Hz]; switching loss needs it and the time, ripple it and the motor's inductance.
     switching_time : float, optional
         t, rise and fall together [s].
+    diode_voltage : float
+        Vd of the diodes through which the current freewheels between the pulses [V]; zero where switches do it.
     throttle_map : tuple of (float, float)
         Stick and duty, from stick 0 to stick 1, the duty never falling; straight lines between.
 
     Raises
     ------
     InputError
-        If a value is out of range or the map is none.
+        If a value is out of range, the map is none, or a controller with diodes is to regenerate.
     """
 
     on_resistance: float = 0.0
@@ -51,6 +54,7 @@ class Controller:
     unpowered: str = "freewheel"
     switching_frequency: float | None = None
     switching_time: float | None = None
+    diode_voltage: float = 0.0
     throttle_map: tuple[tuple[float, float], ...] = ((0.0, 0.0), (1.0, 1.0))
 
     def __post_init__(self) -> None:
@@ -58,6 +62,9 @@ class Controller:
         require_not_negative("on_resistance", self.on_resistance, "ohm")
         require_not_negative("idle_current", self.idle_current, "A")
         require_one_of("unpowered", self.unpowered, UNPOWERED)
+        require_not_negative("diode_voltage", self.diode_voltage, "V")
+        if self.diode_voltage > 0.0 and self.unpowered == "regenerate":
+            raise InputError("diode_voltage", "a diode lets no current back: regeneration needs switches in its place")
         for name, unit in (("current_limit", "A"), ("switching_frequency", "Hz"), ("switching_time", "s")):
             if getattr(self, name) is not None:
                 require_positive(name, getattr(self, name), unit)

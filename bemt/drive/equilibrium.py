@@ -268,7 +268,8 @@ class Drive:
         """Turn the solution into the quantities of the registry."""
         thrust = self.count * state.thrust
         shaft_power = state.torque * state.speed
-        lead_power = circuit.motor_voltage * circuit.motor_current
+        heat_of_ripple = self.motor.resistance * circuit.ripple_current**2 / 12.0
+        lead_power = circuit.motor_voltage * circuit.motor_current + heat_of_ripple
         battery_power = circuit.battery_voltage * circuit.battery_current
         cell_power = self.battery.open_circuit_voltage * circuit.battery_current
         propels = (thrust >= 0.0) & (shaft_power > 0.0)
@@ -294,7 +295,7 @@ class Drive:
             "controller_efficiency": _share(self.count * lead_power, battery_power, lead_power >= 0.0),
             "battery_efficiency": np.where(no_power, 1.0, _share(battery_power, cell_power, cell_power > 0.0)),
             "overall_efficiency": _share(gained, cell_power, propels),
-            "winding_temperature": self._winding_temperature(circuit.motor_current, state.speed),
+            "winding_temperature": self._winding_temperature(circuit.rms_current, state.speed),
             "outside_polar_share": state.outside_polar_share,
             "stalled_share": state.stalled_share,
             "low_reynolds_share": state.low_reynolds_share,
@@ -308,7 +309,7 @@ class Drive:
     def _winding_temperature(self, current: FloatArray, speed: FloatArray) -> FloatArray:
         if self.air is None or self.air.temperature is None:
             return np.full(current.shape, np.nan)
-        return self.motor.winding_temperature(current, speed * self.motor.gear_ratio, self.air.temperature)
+        return self.motor.steady_temperature(current, speed * self.motor.gear_ratio, self.air.temperature)
 
 
 def _share(gained: FloatArray, spent: FloatArray, where: NDArray[np.bool_]) -> FloatArray:

@@ -12,7 +12,9 @@ from bemt.errors import InputError
 from bemt.quantities.checks import require_count, require_not_negative, require_positive
 
 COPPER_TEMPERATURE_COEFFICIENT = 0.00393  # 1/K, of the resistance, referred to 20 degrees Celsius (IEC 60028)
-RESISTANCE_TEMPERATURE = 20.0  # degrees Celsius at which the winding resistance is stated
+RESISTANCE_TEMPERATURE = 293.15  # K, at which the winding resistance is stated
+# K; copper's resistance is straight over temperature in between, and no enamel lasts above.
+_COLDEST, _HOTTEST = 213.15, 573.15
 
 
 @dataclass(frozen=True)
@@ -37,6 +39,10 @@ class Motor:
         Largest continuous current of one motor [A].
     thermal_resistance : float, optional
         Winding to air [K/W].
+    winding_temperature : float
+        At which the copper's resistance is taken for currents and voltages [K], -60 to 300 degrees Celsius.
+    winding_inductance : float, optional
+        Between two leads [H]; the ripple of the current needs it.
     gear_ratio : float
         Motor turns per propeller turn.
     gear_efficiency : float
@@ -55,6 +61,8 @@ class Motor:
     count: int = 1
     current_limit: float | None = None
     thermal_resistance: float | None = None
+    winding_temperature: float = RESISTANCE_TEMPERATURE
+    winding_inductance: float | None = None
     gear_ratio: float = 1.0
     gear_efficiency: float = 1.0
 
@@ -63,13 +71,23 @@ class Motor:
         require_positive("speed_constant", self.speed_constant, "rad/s per V")
         require_positive("winding_resistance", self.winding_resistance, "ohm")
         require_count("count", self.count)
-        for name, unit in (("current_limit", "A"), ("thermal_resistance", "K/W")):
+        for name, unit in (
+            ("current_limit", "A"),
+            ("thermal_resistance", "K/W"),
+            ("winding_inductance", "H"),
+        ):
             if getattr(self, name) is not None:
                 require_positive(name, getattr(self, name), unit)
         require_positive("gear_ratio", self.gear_ratio)
         require_positive("gear_efficiency", self.gear_efficiency)
         if self.gear_efficiency > 1.0:
             raise InputError("gear_efficiency", f"{self.gear_efficiency:g} must not exceed 1")
+        require_positive("winding_temperature", self.winding_temperature, "K")
+        if not _COLDEST <= self.winding_temperature <= _HOTTEST:
+            raise InputError(
+                "winding_temperature",
+                f"{self.winding_temperature - 273.15:.4g} degC is not that of a winding, -60 to 300 degC",
+            )
         self._check_no_load()
 
     def _check_no_load(self) -> None:
@@ -94,6 +112,12 @@ class Motor:
     def _readings(self) -> NDArray[np.float64]:
         return np.array(sorted(self.no_load), dtype=np.float64)
 
+    def _no_load_voltages(self) -> NDArray[np.float64]:
+        """Return the voltages that turn the motor at the speeds of its readings; they were read on a cold motor."""
+        readings = self._readings()
+        warmed: NDArray[np.float64] = readings[:, 0] + readings[:, 1] * (self.resistance - self.winding_resistance)
+        return warmed
+
     def _no_load_speeds(self) -> NDArray[np.float64]:
         readings = self._readings()
         speeds: NDArray[np.float64] = self.speed_constant * (readings[:, 0] - readings[:, 1] * self.winding_resistance)
@@ -103,6 +127,12 @@ class Motor:
     def torque_constant(self) -> float:
         """Torque per current beyond the no-load current [N m/A], 1/Kv."""
         return 1.0 / self.speed_constant
+
+    @property
+    def resistance(self) -> float:
+        """Resistance between two leads at the winding temperature, R20 (1 + a (T - T20)) [ohm]."""
+        rise = COPPER_TEMPERATURE_COEFFICIENT * (self.winding_temperature - RESISTANCE_TEMPERATURE)
+        return self.winding_resistance * (1.0 + rise)
 
     def no_load_current(self, speed: ArrayLike) -> NDArray[np.float64]:
         """Return the current that overcomes the motor's own drag.
@@ -175,17 +205,17 @@ class Motor:
         found: NDArray[np.float64] = torque * self.speed_constant + self.no_load_current(speed)
         return found
 
-    def winding_temperature(self, current: ArrayLike, speed: ArrayLike, air_temperature: float) -> NDArray[np.float64]:
+    def steady_temperature(self, current: ArrayLike, speed: ArrayLike, air_temperature: float) -> NDArray[np.float64]:
         """Return the steady temperature of the winding.
 
         The copper's resistance rises with the temperature it causes, which closes to
         T = (Ta + Rth (P0 + I^2 R (1 - 20 a))) / (1 - Rth I^2 R a) with P0 = I0 w/Kv. All losses are taken to pass
-        through the winding's thermal resistance. The electrical solution keeps the resistance of 20 degrees Celsius.
+        through the winding's thermal resistance. The electrical solution keeps the resistance of `winding_temperature`.
 
         Parameters
         ----------
         current : array_like
-            Motor current [A].
+            Motor current, the root of its mean square where it swings [A].
         speed : array_like
             Angular speed of the motor [rad/s]; broadcast against `current`.
         air_temperature : float
@@ -203,7 +233,7 @@ class Motor:
         own_drag = self.no_load_current(speed) * np.abs(speed) * self.torque_constant
         copper = current**2 * self.winding_resistance
         rise = self.thermal_resistance * copper * COPPER_TEMPERATURE_COEFFICIENT
-        cold = copper * (1.0 - RESISTANCE_TEMPERATURE * COPPER_TEMPERATURE_COEFFICIENT)
+        cold = copper * (1.0 - (RESISTANCE_TEMPERATURE - 273.15) * COPPER_TEMPERATURE_COEFFICIENT)
         source = air_temperature - 273.15 + self.thermal_resistance * (own_drag + cold)
         return np.where(rise >= 1.0, np.inf, source / np.where(rise >= 1.0, np.nan, 1.0 - rise))
 
@@ -223,8 +253,7 @@ def no_load_current_at(motor: Motor, voltage: ArrayLike) -> NDArray[np.float64]:
     numpy.ndarray
         Current [A]; where I0 is linear in speed it is linear in voltage too, so no search is needed.
     """
-    readings = motor._readings()
-    return _straight_line_through(voltage, readings[:, 0], readings[:, 1])
+    return _straight_line_through(voltage, motor._no_load_voltages(), motor._readings()[:, 1])
 
 
 def no_load_speed(motor: Motor, voltage: ArrayLike) -> NDArray[np.float64]:
@@ -248,7 +277,7 @@ def no_load_speed(motor: Motor, voltage: ArrayLike) -> NDArray[np.float64]:
     Machinery.
     """
     voltage = np.asarray(voltage, dtype=np.float64)
-    back_emf = voltage - no_load_current_at(motor, voltage) * motor.winding_resistance
+    back_emf = voltage - no_load_current_at(motor, voltage) * motor.resistance
     return np.maximum(motor.speed_constant * back_emf, 0.0)
 
 
@@ -271,7 +300,7 @@ def stall_torque(motor: Motor, voltage: ArrayLike) -> NDArray[np.float64]:
     ----------
     As for `no_load_speed`.
     """
-    current = np.asarray(voltage, dtype=np.float64) / motor.winding_resistance
+    current = np.asarray(voltage, dtype=np.float64) / motor.resistance
     return np.maximum(motor.torque(current, 0.0), 0.0)
 
 
@@ -295,7 +324,7 @@ def peak_efficiency_current(motor: Motor, voltage: ArrayLike) -> NDArray[np.floa
     From d/dI of the efficiency (1 - I R/V)(1 - I0/I) at constant voltage.
     """
     voltage = np.asarray(voltage, dtype=np.float64)
-    found: NDArray[np.float64] = np.sqrt(no_load_current_at(motor, voltage) * voltage / motor.winding_resistance)
+    found: NDArray[np.float64] = np.sqrt(no_load_current_at(motor, voltage) * voltage / motor.resistance)
     return found
 
 
@@ -319,7 +348,7 @@ def peak_efficiency(motor: Motor, voltage: ArrayLike) -> NDArray[np.float64]:
     The efficiency (1 - I R/V)(1 - I0/I) at the current of `peak_efficiency_current`.
     """
     voltage = np.asarray(voltage, dtype=np.float64)
-    lost = np.sqrt(no_load_current_at(motor, voltage) * motor.winding_resistance / voltage)
+    lost = np.sqrt(no_load_current_at(motor, voltage) * motor.resistance / voltage)
     found: NDArray[np.float64] = (1.0 - lost) ** 2
     return found
 
