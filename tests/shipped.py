@@ -16,7 +16,7 @@ from bemt.rotor.elements import blade_elements
 from bemt.rotor.model import Model
 from bemt.rotor.solution import solve
 
-CASES = ("nr640_9in", "sandpiper")
+CASES = ("nr640_9in", "sandpiper")  # gone through by the tests of the solution; mudlark_hover serves those of hovering
 FOLDER = Path(__file__).parent.parent / "cases"
 
 

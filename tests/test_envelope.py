@@ -3,17 +3,20 @@
 from __future__ import annotations
 
 import math
+import re
 from dataclasses import replace
 
 import numpy as np
 import pytest
 import shipped
 from analytic_propeller import AnalyticPropeller
+from scipy.integrate import quad, simpson
 from scipy.optimize import brentq
 
 import bemt
 from bemt.air import standard_air
 from bemt.drive import Battery, Controller, Drive, Motor, speed_constant_from_rpm
+from bemt.drive.battery import OPEN_CIRCUIT_VOLTAGE
 from bemt.errors import InputError
 from bemt.flight import (
     Airframe,
@@ -149,13 +152,66 @@ def test_the_level_throttle_gives_the_level_point(envelope):
         np.testing.assert_allclose(getattr(points, name), level[f"level_{name}"][flies], rtol=1e-9, err_msg=name)
 
 
-def test_endurance_and_range_are_charge_over_current(envelope):
+def _discharge(current: float, rpm: float) -> float:
+    """Time a motor state is held, by a general-purpose integrator on the circuit written out here."""
+    shares, volts = OPEN_CIRCUIT_VOLTAGE["lithium-polymer"]
+    speed = rpm * math.pi / 30.0
+    leads = speed / MOTOR.speed_constant + current * (0.041 + 0.003)
+    resistance = 4 * 0.0024
+
+    def duty(charge: float) -> float:
+        # d (Voc - (d I + 0.04) Rb) = leads: the smaller root.
+        linear = 4.0 * float(np.interp(charge, shares, volts)) - 0.04 * resistance
+        return (linear - math.sqrt(linear**2 - 4.0 * resistance * current * leads)) / (2.0 * resistance * current)
+
+    end = 0.2 if duty(0.2) <= 1.0 else brentq(lambda charge: duty(charge) - 1.0, 0.2, 1.0)
+    inside = [share for share in shares if end < share < 1.0]
+    found, _ = quad(
+        lambda charge: 18_000.0 / (duty(charge) * current + 0.04), end, 1.0, points=inside, limit=200, epsrel=1e-11
+    )
+    return found
+
+
+def test_endurance_is_the_discharge_integrated(envelope):
     level = envelope.values
     flies = np.isfinite(level["level_rpm"])
-    # Four fifths of 5 A h.
-    np.testing.assert_allclose(level["endurance"][flies] * level["level_battery_current"][flies], 4.0 * 3600.0)
+    expected = [
+        _discharge(current, rpm)
+        for current, rpm in zip(level["level_motor_current"][flies], level["level_rpm"][flies], strict=True)
+    ]
+    np.testing.assert_allclose(level["endurance"][flies], expected, rtol=1e-7)
     np.testing.assert_allclose(level["range"], level["endurance"] * AXES["airspeed"])
     assert np.isnan(level["endurance"][~flies]).all()
+    # Four fifths of 5 A h over the first current is the upper end.
+    single = 4.0 * 3600.0 / level["level_battery_current"][flies]
+    assert np.all(level["endurance"][flies] < single)
+
+
+def test_where_full_throttle_ends_the_flight_is_said(envelope):
+    level = envelope.values
+    shares, volts = OPEN_CIRCUIT_VOLTAGE["lithium-polymer"]
+    current, speed = level["level_motor_current"], level["level_rpm"] * math.pi / 30.0
+    # At full duty Voc = w/Kv + I (R + Ron) + (I + I_idle) Rb.
+    needed = speed / MOTOR.speed_constant + current * 0.044 + (current + 0.04) * 4 * 0.0024
+    short = AXES["airspeed"][needed > 4.0 * np.interp(0.2, shares, volts)]
+    (note,) = [note for note in envelope.notes if "full throttle no longer holds it" in note]
+    assert 2 <= short.size < 10
+    assert f"between {short[0]:.1f} and {short[-1]:.1f} m/s" in note
+
+
+def test_time_at_full_throttle(envelope):
+    charge = np.linspace(0.2, 1.0, 801)
+    for name in ("static", "best_climb", "top_speed"):
+        airspeed = _point(envelope, name, "airspeed")
+        drawn = [
+            float(replace(DRIVE, battery=replace(BATTERY, charge_left=s)).at_throttle(airspeed, 1.0).battery_current)
+            for s in charge
+        ]
+        assert _point(envelope, name, "drain_time") == pytest.approx(
+            simpson(18_000.0 / np.array(drawn), x=charge), rel=1e-6
+        )
+        assert math.isnan(_point(envelope, name, "endurance"))
+    assert math.isnan(_point(envelope, "cruise", "drain_time"))
 
 
 def test_climb_rate_is_excess_power_over_weight(envelope):
@@ -229,7 +285,10 @@ def test_best_range_and_endurance_of_a_constant_efficiency():
     weight = 3.1 * 9.80665
     least_drag = 2.0 * weight * math.sqrt(0.034 * 0.052)
     speed = math.sqrt(2.0 * weight / (AIR.density * 0.52)) * (0.052 / 0.034) ** 0.25
-    energy = 0.8 * battery.usable_charge * battery.open_circuit_voltage
+    # Without loss in the drive the power stays the same, so the charge gives its energy: the open-circuit voltage over
+    # the charge from a fifth to all of it, straight lines between its nodes.
+    shares, volts = np.array(OPEN_CIRCUIT_VOLTAGE["lithium-polymer"])
+    energy = 0.8 * battery.capacity * 4.0 * np.trapezoid(volts[shares >= 0.2], shares[shares >= 0.2])
     assert _point(found, "best_range", "overall_efficiency") == pytest.approx(0.8, rel=1e-6)
     assert _point(found, "best_range", "range") == pytest.approx(energy / least_drag, rel=1e-5)
     assert _point(found, "best_range", "airspeed") == pytest.approx(speed, rel=2e-3)
@@ -321,6 +380,92 @@ def test_a_weak_installation_costs_throttle(envelope):
     assert np.all(worse.values["level_throttle"][flies] > free.values["level_throttle"][flies])
     # Four fifths of the thrust arrive, so the propellers give five quarters of the drag.
     np.testing.assert_allclose(worse.values["level_thrust"][flies], 1.25 * free.values["drag"][flies], rtol=1e-11)
+
+
+# --- without power -------------------------------------------------------------------------------------------------
+
+
+def test_drag_of_unpowered_propellers(envelope):
+    # CT = t0 + t1 J + t2 J^2: stopped only t2 V^2 remains; windmilling at the J where CP = p0 + p1 J + p2 J^2 is zero;
+    # freewheeling where the propeller drives the no-load torque I0/Kv.
+    disk = 0.97 * AXES["airspeed"]
+    D, rho = PROPELLER.diameter, AIR.density
+    (t0, t1, t2), (p0, p1, p2) = PROPELLER.thrust, PROPELLER.power
+    values = envelope.values
+    np.testing.assert_allclose(values["stopped_drag"], -t2 * rho * D**2 * disk**2, rtol=1e-12)
+    J = (p1 + math.sqrt(p1**2 - 4.0 * p0 * p2)) / (-2.0 * p2)
+    n = disk / (J * D)
+    np.testing.assert_allclose(values["windmilling_rpm"], 60.0 * n, rtol=1e-10)
+    np.testing.assert_allclose(
+        values["windmilling_drag"], -(t0 + t1 * J + t2 * J**2) * rho * n**2 * D**4, rtol=1e-10, atol=1e-12
+    )
+    held = 0.9 / MOTOR.speed_constant
+    for k, airspeed in enumerate(disk):
+
+        def driven(n: float, airspeed: float = airspeed) -> float:
+            torque = rho * D**3 * (p0 * n**2 * D**2 + p1 * n * D * airspeed + p2 * airspeed**2) / (2.0 * math.pi)
+            return -torque - held
+
+        turns = brentq(driven, 0.0, n[k]) if driven(0.0) > 0.0 else 0.0
+        thrust = rho * D**2 * (t0 * turns**2 * D**2 + t1 * turns * D * airspeed + t2 * airspeed**2)
+        assert values["freewheeling_rpm"][k] == pytest.approx(60.0 * turns, rel=1e-9, abs=1e-9)
+        assert values["freewheeling_drag"][k] == pytest.approx(-thrust, rel=1e-9, abs=1e-9)
+    # Friction slows the wheel between its two ends; at rest nothing drags, and a light wind does not turn the motor.
+    assert values["freewheeling_rpm"][1] == 0.0
+    turning = values["freewheeling_rpm"] > 0.0
+    assert turning.sum() > 20
+    assert np.all(values["freewheeling_rpm"][turning] < values["windmilling_rpm"][turning])
+    for name in ("stopped_drag", "freewheeling_drag", "windmilling_drag"):
+        assert values[name][0] == 0.0
+        assert np.all(np.diff(values[name]) > 0.0)
+    bare = build_envelope(PROPELLER, AIR, installation=INSTALLATION, airspeed=AXES["airspeed"], rpm=[9000.0])
+    np.testing.assert_allclose(bare.values["windmilling_rpm"], values["windmilling_rpm"], rtol=1e-10)
+    assert "freewheeling_drag" not in bare.values
+
+
+# --- decisions -----------------------------------------------------------------------------------------------------
+
+
+def test_decisions_in_words(envelope):
+    take_off, throttle, chain, drag, first = envelope.decisions
+    static = 0.98 * _point(envelope, "static", "thrust") / (3.1 * 9.80665)
+    assert _point(envelope, "static", "thrust_to_weight") == pytest.approx(static, rel=1e-12)
+    assert f"standing still is {static:.2f} of the weight" in take_off
+    lift_off = 1.2 * AIRFRAME.stall_speed(AIR.density)
+    assert f"a climb of {_full_surplus(lift_off) * lift_off / (3.1 * 9.80665):.1f} m/s" in take_off
+    stick = _point(envelope, "cruise", "throttle")
+    assert throttle.startswith(f"cruise at 16.0 m/s takes {100 * stick:.0f} % throttle, above the usual 30 to 40 %")
+    assert "common practice, no source" in throttle
+    # The parts and what moves the aircraft make up what the cells give: open-circuit voltage times current.
+    watts = [float(number) for number in re.findall(r"([\d.]+) W", chain)]
+    cells, *lost, left = watts
+    assert cells == pytest.approx(16.8 * _point(envelope, "cruise", "battery_current"), rel=5e-3)
+    assert sum(lost) + left == pytest.approx(cells, rel=5e-3)
+    assert left == pytest.approx(16.0 * float(AIRFRAME.drag(16.0, AIR.density)), rel=5e-3)
+    shares = [float(number) / 100.0 for number in re.findall(r"\(([\d.]+) %\)", chain)]
+    parts = ("battery", "controller", "motor", "propeller")
+    for part, share in zip(parts, shares, strict=True):
+        assert share == pytest.approx(_point(envelope, "cruise", f"{part}_efficiency"), abs=6e-4)
+    assert chain.endswith(f"The {parts[int(np.argmax(lost))]} loses most")
+    at_16 = {name: envelope.values[f"{name}_drag"][16] for name in ("stopped", "freewheeling", "windmilling")}
+    assert f"held still {at_16['stopped']:.3g} N, freewheeling {at_16['freewheeling']:.3g} N at" in drag
+    binds = brentq(lambda stick: float(DRIVE.at_throttle(0.0, stick).motor_current) - 42.0, 0.1, 1.0)
+    assert f"standing still the motor's current (42 A) from throttle {binds:.2f}" in first
+    assert envelope.to_dataset({}).attrs["decisions"].splitlines() == list(envelope.decisions)
+
+
+def test_a_weak_drive_does_not_take_off():
+    found = build_envelope(PROPELLER, AIR, **(PARTS | {"airframe": replace(AIRFRAME, mass=60.0)}), **AXES)
+    assert "gives no climb: it does not take off" in found.decisions[0]
+    assert not any("cells give" in words for words in found.decisions)
+
+
+def test_no_limits_no_word_of_what_burns_first():
+    bare = {"motor": replace(MOTOR, current_limit=None), "battery": replace(BATTERY, discharge_multiple=None)}
+    found = build_envelope(PROPELLER, AIR, **bare, airspeed=[0.0, 10.0])
+    assert found.decisions == (
+        "what burns first is not known: the case gives no limit of propeller, motor, controller or battery",
+    )
 
 
 # --- limits --------------------------------------------------------------------------------------------------------

@@ -5,10 +5,12 @@ from __future__ import annotations
 import itertools
 import struct
 import xml.etree.ElementTree as ET
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
 import pytest
+import shipped
 import synthetic
 import xarray as xr
 from matplotlib.backends.backend_agg import FigureCanvasAgg
@@ -18,6 +20,7 @@ from matplotlib.lines import Line2D
 from matplotlib.text import Text
 from scipy.optimize import isotonic_regression
 
+import bemt
 from bemt.errors import InputError, RunError
 from bemt.figures.coefficients import coefficient_figure
 from bemt.figures.envelope import envelope_figure
@@ -77,6 +80,15 @@ FIGURES = {
     "hard coefficients": lambda: coefficient_figure(hard_table()),
     "envelope": lambda: envelope_figure(synthetic.envelope()),
     "winding": lambda: envelope_figure(synthetic.envelope(winding=True)),
+    "hover": lambda: envelope_figure(
+        bemt.envelope(shipped.case("mudlark_hover"), table=shipped.table("mudlark_hover"))
+    ),
+    "no motor": lambda: envelope_figure(
+        bemt.envelope(
+            replace(shipped.case("sandpiper"), motor=None, controller=None, battery=None),
+            table=shipped.table("sandpiper"),
+        )
+    ),
     "no limits": lambda: envelope_figure(synthetic.envelope(limits=False)),
     "long title": lambda: envelope_figure(synthetic.envelope().assign_attrs(title="Survey of the mudflats " * 9)),
 }
@@ -227,7 +239,7 @@ def test_the_legend_of_an_envelope_borrows_no_lines_colour() -> None:
     # The entry of the throttle shows all of their colours, and no other entry shows one of them.
     assert throttles <= {line.get_color() for line in legend.findobj(Line2D)}
     assert "throttle, low to high" in drawn
-    for name in ("beyond a limit", "level flight (drag)"):
+    for name in ("beyond a limit", "required in level flight"):
         assert to_rgb(drawn[name].get_color()) not in throttles
 
 
@@ -268,7 +280,15 @@ def test_a_guessed_section_and_a_failed_point_are_said() -> None:
 def test_envelope_draws_limits_drag_and_cruise() -> None:
     run = synthetic.envelope()
     panels = {axes.get_ylabel().split(" [")[0]: axes for axes in envelope_figure(run).axes}
-    assert set(panels) == {"thrust", "battery current", "motor current", "rotational speed"}
+    assert set(panels) == {
+        "thrust",
+        "battery current",
+        "motor current",
+        "rotational speed",
+        "efficiency, steady flight",
+        "endurance (full line)",
+        "range (dashed line)",
+    }
     levels = {
         name: {round(float(line.get_ydata()[0]), 6) for line in axes.lines if np.ptp([*line.get_ydata(), 0, 0]) > 0
                and len(set(line.get_ydata())) == 1}
@@ -277,10 +297,41 @@ def test_envelope_draws_limits_drag_and_cruise() -> None:
     assert {42.0, 50.0} <= levels["motor current"]
     assert 9500.0 in levels["rotational speed"]
     thrust = panels["thrust"].lines
-    assert any(np.array_equal(line.get_ydata(), run["drag"].values, equal_nan=True) for line in thrust)
+    assert any(np.array_equal(line.get_ydata(), run["required_thrust"].values, equal_nan=True) for line in thrust)
+    for name, variable, scale in (
+        ("efficiency, steady flight", "level_overall_efficiency", 100.0),
+        ("endurance (full line)", "endurance", 1.0 / 60.0),
+        ("range (dashed line)", "range", 1e-3),
+    ):
+        wanted = run[variable].values * scale
+        assert any(
+            np.size(line.get_ydata()) == wanted.size and np.allclose(line.get_ydata(), wanted, equal_nan=True)
+            for line in panels[name].lines
+        )
     cruise = run.sel(point="cruise")
     at = (float(cruise["point_airspeed"]), float(cruise["point_thrust"]))
     assert any(line.get_marker() == "*" and (line.get_xdata()[0], line.get_ydata()[0]) == at for line in thrust)
+
+
+def test_the_page_has_the_proportion_of_a4_and_says_in_words_what_it_means() -> None:
+    figure = envelope_figure(bemt.envelope(shipped.case("sandpiper"), table=shipped.table("sandpiper")))
+    width, height = figure.get_size_inches()
+    assert height / width == pytest.approx(2.0**0.5, rel=0.05)  # ISO 216
+    texts = " ".join(text.get_text() for text in figure.texts)
+    assert "The propeller loses most." in texts
+    assert "Trust in steady flight: good at" in texts
+
+
+def test_the_page_of_what_hovers() -> None:
+    run = bemt.envelope(shipped.case("mudlark_hover"), table=shipped.table("mudlark_hover"))
+    figure = envelope_figure(run)
+    labels = {axes.get_ylabel().split(" [")[0] for axes in figure.axes}
+    assert "endurance" in labels
+    assert "range (dashed line)" not in labels
+    assert any(axes.get_xlabel() == "climb speed [m/s]" for axes in figure.axes)
+    texts = [text for text, _ in drawn_texts(figure)]
+    assert "FM" in texts
+    assert "required to climb" in texts
 
 
 def test_envelope_dots_exactly_where_a_limit_is_broken() -> None:

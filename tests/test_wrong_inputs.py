@@ -142,6 +142,29 @@ WRONG: dict[str, tuple[str, dict[str, str | bytes], str, int | None, str, str]] 
     "airframe without drag": (
         CASE + '[airframe]\nmass = "2 kg"\n', {}, "case.toml", 15, "airframe.drag", "cd0",
     ),
+    "hovering with a wing": (
+        CASE + '[airframe]\nmass = "2 kg"\nhover = true\nwing_area = "0.5 m^2"\n', {},
+        "case.toml", 18, "airframe.wing_area", "hovering airframe has no wing",
+    ),
+    "hovering with a stall": (
+        CASE + '[airframe]\nmass = "2 kg"\nhover = true\ncl_max = 1.2\n', {},
+        "case.toml", 18, "airframe.cl_max", "hovering airframe has no wing",
+    ),
+    "hovering in cruise": (
+        CASE + '[airframe]\nmass = "2 kg"\nhover = true\ncruise_speed = "12 m/s"\n', {},
+        "case.toml", 18, "airframe.cruise_speed", "hovering airframe has no wing",
+    ),
+    "hovering with a polar": (
+        CASE + '[airframe]\nmass = "2 kg"\nhover = true\ndrag = { cd0 = 0.03, k = 0.05 }\n', {},
+        "case.toml", 18, "airframe.drag", "belong to a wing",
+    ),
+    "hovering without a mass": (
+        CASE + "[airframe]\nhover = true\n", {}, "case.toml", 15, "airframe.mass", "missing",
+    ),
+    "drag while hovering": (
+        CASE + '[airframe]\nmass = "2 kg"\nhover = true\ndrag = "d.csv"\n',
+        {"d.csv": "airspeed_m_s,drag_N\n0,1\n5,2\n"}, "case.toml", 18, "airframe.drag", "begins above",
+    ),
     # The models.
     "misspelt law": (
         CASE + '[model]\npost_stall = "virtena"\n', {}, "case.toml", 16, "model.post_stall", "viterna",
@@ -151,12 +174,30 @@ WRONG: dict[str, tuple[str, dict[str, str | bytes], str, int | None, str, str]] 
         CASE.replace('family = "flat-bottom"', 'shape = "NACA 4412"'), {},
         "case.toml", 10, "section[1].shape", "not available",
     ),
-    "motor by its label": (
-        CASE + '[motor]\nspeed_constant = "900 rpm/V"\nlabel_only = true\n', {},
-        "case.toml", 17, "motor.label_only", "not available",
+    "label of a motor": (
+        CASE + '[motor]\nspeed_constant = "900 rpm/V"\nlabel_only = true\nlabel = "28-14"\n', {},
+        "case.toml", 18, "motor.label", "four digits",
     ),
-    "hovering": (
-        CASE + '[airframe]\nmass = "2 kg"\nhover = true\n', {}, "case.toml", 17, "airframe.hover", "not available",
+    "stator without height": (
+        CASE + '[motor]\nspeed_constant = "900 rpm/V"\nlabel_only = true\nlabel = "2800"\n', {},
+        "case.toml", 18, "motor.label", "28 by 0 mm",
+    ),
+    "winding too hot": (
+        CASE + '[motor]\nspeed_constant = "900 rpm/V"\nlabel_only = true\nwinding_temperature = "400 degC"\n', {},
+        "case.toml", 18, "motor.winding_temperature", "400 degC",
+    ),
+    "inductance without frequency": (
+        CASE + '[motor]\nspeed_constant = "900 rpm/V"\nlabel_only = true\nwinding_inductance = "25 uH"\n', {},
+        "case.toml", 18, "motor.winding_inductance", "switching_frequency",
+    ),
+    "regeneration through diodes": (
+        CASE + '[controller]\nunpowered = "regenerate"\ndiode_voltage = "0.7 V"\n', {},
+        "case.toml", 17, "controller.diode_voltage", "regeneration",
+    ),
+    "frozen battery": (
+        CASE + '[battery]\ncells_in_series = 4\ncapacity = "5 A*h"\ncell_resistance = "2 mohm"\n'
+        'temperature = "-50 degC"\n', {},
+        "case.toml", 19, "battery.temperature", "-50 degC",
     ),
     "a correction": (CASE + "[correction]\ndrag_scale = 1.1\n", {}, "case.toml", 15, "correction", "not available"),
 }  # fmt: skip

@@ -19,6 +19,8 @@ if TYPE_CHECKING:
 _ROWS_SHOWN = 16
 _MISSING = "-"
 _NO_POINT = "none"
+_WIDTH = 110
+_NO_BREAK = "\u00a0"  # keeps a number with its % while lines are wrapped
 _SHORTENED = "Not all airspeeds shown; -o FILE.csv or FILE.nc keeps all."
 
 
@@ -67,6 +69,12 @@ _POINT_COLUMNS: tuple[_Column, ...] = (
     _Column("throttle", "%", "point_throttle", 100.0),
     *_drive_columns("point_", "torque", "propeller_efficiency"),
     *(replace(column, name=f"point_{column.name}") for column in _FLIGHT_COLUMNS),
+    _Column("full", "min", "point_drain_time", 1 / 60, 1),
+)
+_HOVER_COLUMNS: tuple[_Column, ...] = (
+    *_POINT_COLUMNS,
+    _Column("T/W", "", "point_thrust_to_weight", digits=2),
+    _Column("FM", "", "point_figure_of_merit", digits=2),
 )
 _LEVEL_COLUMNS: tuple[_Column, ...] = (
     _Column("V", "m/s", "airspeed", digits=1),
@@ -180,7 +188,8 @@ def _trust_lines(dataset: xr.Dataset, prefix: str, axes: tuple[str, ...]) -> Ite
     """Yield how many points have which grade, why, and where."""
     named = {_AXES.get(axis, axis): dataset[axis].values for axis in axes}
     best, *others = trust_in_words(dataset[f"{prefix}trust"].values, dataset[f"{prefix}trust_reasons"].values, named)
-    yield f"Trust{' in level flight' if prefix else ''}: {best}"
+    where = " in steady climb" if "point_figure_of_merit" in dataset else " in level flight"
+    yield f"Trust{where if prefix else ''}: {best}"
     for grade in others:
         yield from textwrap.wrap(grade, 100, initial_indent="  ", subsequent_indent="    ")
 
@@ -256,7 +265,8 @@ def _operating_rows(
 def _points_block(run: xr.Dataset) -> tuple[list[str], bool]:
     """Return the lines of the named points, and whether any value is beyond its limit."""
     exists = np.isfinite(run["point_rpm"].values)
-    heads, rows, marked = _operating_rows(run, _POINT_COLUMNS, "point", range(exists.size), "point_trust")
+    columns = _HOVER_COLUMNS if "point_figure_of_merit" in run else _POINT_COLUMNS
+    heads, rows, marked = _operating_rows(run, columns, "point", range(exists.size), "point_trust")
     names = [spoken(str(name)) for name in run["point"].values]
     shown = [
         [name, *(row if there else [_NO_POINT, *[""] * (len(row) - 1)])]
@@ -293,6 +303,21 @@ def _grid_blocks(run: xr.Dataset) -> tuple[list[str], bool]:
     return lines if whole else [*lines, _SHORTENED], marked
 
 
+def sentence(words: str) -> str:
+    """Begin with a capital and end with a full stop.
+
+    Parameters
+    ----------
+    words : str
+        A note.
+
+    Returns
+    -------
+    str
+    """
+    return f"{words[:1].upper()}{words[1:]}."
+
+
 def _thinned(shown: int, of: int) -> list[str]:
     return [f"{shown} of {of} airspeeds shown; -o FILE.csv or FILE.nc keeps all."] if shown < of else []
 
@@ -308,8 +333,9 @@ def envelope_text(run: xr.Dataset) -> str:
     Returns
     -------
     str
-        The named points, then level flight over airspeed; without an airframe full throttle over airspeed, or, without
-        a motor as well, every rpm of the grid over airspeed. A value beyond its limit carries a mark.
+        The named points, what a builder decides by in words, then level flight or steady climb over airspeed; without
+        an airframe full throttle over airspeed, or, without a motor as well, every rpm of the grid over airspeed. A
+        value beyond its limit carries a mark.
     """
     lines: list[str] = []
     title = str(run.attrs.get("title", ""))
@@ -321,6 +347,13 @@ def envelope_text(run: xr.Dataset) -> str:
     if "point" in run.dims and (powered or flies):
         block, marked = _points_block(run)
         lines += block
+    decisions = str(run.attrs.get("decisions", "")).splitlines()
+    for decision in decisions:
+        joined = sentence(decision).replace(" %", f"{_NO_BREAK}%")
+        wrapped = textwrap.wrap(joined, _WIDTH, initial_indent="- ", subsequent_indent="  ")
+        lines += [line.replace(_NO_BREAK, " ") for line in wrapped]
+    lines += [""] if decisions else []
+    steady = "Climbing straight up, hovering at 0 m/s" if "point_figure_of_merit" in run else "Level flight"
     if not flies:
         block, over = _grid_blocks(run)
         lines += block
@@ -329,10 +362,10 @@ def envelope_text(run: xr.Dataset) -> str:
         flown = np.flatnonzero(np.isfinite(run["level_rpm"].values))
         picked = [int(flown[k]) for k in _every(flown.size)]
         heads, rows, over = _operating_rows(run, _LEVEL_COLUMNS, "airspeed", picked, "level_trust")
-        lines += ["Level flight:", *_aligned(heads, rows), "", *_thinned(len(picked), flown.size)]
+        lines += [f"{steady}:", *_aligned(heads, rows), "", *_thinned(len(picked), flown.size)]
         marked |= over
     else:
-        lines += ["Level flight: none at any airspeed of the grid.", ""]
+        lines += [f"{steady}: none at any airspeed of the grid.", ""]
     modelled = "winding_temperature" in run and not np.isnan(run["winding_temperature"].values).all()
     if not flies and "trust_reasons" in run:
         second = "rpm" if "throttle" not in run.dims else "throttle"
@@ -347,6 +380,13 @@ def envelope_text(run: xr.Dataset) -> str:
             "Winding: the temperature it would settle at, held there; marked above "
             f"{WINDING_CEILING:g} degC (common practice, no source)."
         )
+    if "point_drain_time" in run:
+        lines.append(
+            "full: until the usable charge is gone at full throttle; endurance ends early where full throttle is"
+        )
+        lines.append("not enough for the falling voltage.")
+    if "point_figure_of_merit" in run:
+        lines.append("T/W: thrust that reaches the airframe over weight; FM: figure of merit, ideal over shaft power.")
     lines.append(
         "Thrust is of all propellers, shaft power and motor current of one motor, battery values of the pack."
         if powered

@@ -1,4 +1,4 @@
-"""The airframe in level flight, and what it does to the propeller's inflow and thrust."""
+"""The airframe in level flight or hovering, and what it does to the propeller's inflow and thrust."""
 
 from __future__ import annotations
 
@@ -62,21 +62,11 @@ class Airframe:
         if self.drag_table is not None:
             if self.cd0 is not None or self.k is not None:
                 raise InputError("drag", "give either cd0 and k or a table of airspeed and drag, not both")
-            self._check_table(self.drag_table)
+            _check_table(self.drag_table)
         elif self.cd0 is None or self.k is None:
             raise InputError("drag", "needs cd0 and k, or a table of airspeed and drag")
         elif self.wing_area is None:
             raise InputError("wing_area", "needed to make a drag of cd0 and k")
-
-    @staticmethod
-    def _check_table(table: tuple[tuple[float, float], ...]) -> None:
-        if len(table) < 2 or any(len(pair) != 2 for pair in table):
-            raise InputError("drag", "the table needs at least two pairs of airspeed and drag")
-        for airspeed, drag in table:
-            require_not_negative("drag.airspeed", airspeed, "m/s")
-            require_positive("drag.drag", drag, "N")
-        if any(after[0] <= before[0] for before, after in itertools.pairwise(table)):
-            raise InputError("drag.airspeed", "must rise strictly from row to row")
 
     @property
     def weight(self) -> float:
@@ -146,6 +136,77 @@ class Airframe:
         pressure_area = np.where(flies, 0.5 * density * airspeed**2 * area, np.nan)
         found: NDArray[np.float64] = pressure_area * cd0 + k * self.weight**2 / pressure_area
         return found
+
+
+@dataclass(frozen=True)
+class Multirotor:
+    """An aircraft without a wing, held up by its propellers, their shafts upright.
+
+    Parameters
+    ----------
+    mass : float
+        [kg].
+    drag_table : tuple of (float, float), optional
+        Airspeed [m/s] and drag [N] of the whole craft climbing straight up in the air at hand, airspeeds ascending from
+        above 0. Without it the drag of climbing is left out, and climb rates are upper ends.
+
+    Raises
+    ------
+    InputError
+        If a value is out of range.
+    """
+
+    mass: float
+    drag_table: tuple[tuple[float, float], ...] | None = None
+
+    def __post_init__(self) -> None:
+        """Refuse values that describe no aircraft."""
+        require_positive("mass", self.mass, "kg")
+        if self.drag_table is not None:
+            _check_table(self.drag_table)
+            if self.drag_table[0][0] == 0.0:
+                raise InputError("drag.airspeed", "hovering at 0 m/s has no drag: the table begins above it")
+
+    @property
+    def weight(self) -> float:
+        """Mass times standard gravity [N]."""
+        return self.mass * STANDARD_GRAVITY
+
+    @property
+    def fastest(self) -> float:
+        """Climb speed at which the drag ceases to be known [m/s]; infinite without a drag table."""
+        return math.inf if self.drag_table is None else self.drag_table[-1][0]
+
+    def drag(self, airspeed: ArrayLike) -> NDArray[np.float64]:
+        """Return the drag of climbing straight up.
+
+        Parameters
+        ----------
+        airspeed : array_like
+            Speed of the climb [m/s].
+
+        Returns
+        -------
+        numpy.ndarray
+            The table's value, straight lines between its rows and from none at rest [N]; zero without a table, NaN
+            beyond it.
+        """
+        airspeed = np.asarray(airspeed, dtype=np.float64)
+        if self.drag_table is None:
+            return np.where(np.isfinite(airspeed), 0.0, np.nan)
+        axis, values = np.array(((0.0, 0.0), *self.drag_table), dtype=np.float64).T
+        return np.where(airspeed <= axis[-1], np.interp(airspeed, axis, values), np.nan)
+
+
+def _check_table(table: tuple[tuple[float, float], ...]) -> None:
+    """Refuse pairs that are no table of airspeed and drag."""
+    if len(table) < 2 or any(len(pair) != 2 for pair in table):
+        raise InputError("drag", "the table needs at least two pairs of airspeed and drag")
+    for airspeed, drag in table:
+        require_not_negative("drag.airspeed", airspeed, "m/s")
+        require_positive("drag.drag", drag, "N")
+    if any(after[0] <= before[0] for before, after in itertools.pairwise(table)):
+        raise InputError("drag.airspeed", "must rise strictly from row to row")
 
 
 @dataclass(frozen=True)

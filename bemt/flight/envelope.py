@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, fields, replace
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -12,25 +12,32 @@ from numpy.typing import ArrayLike, NDArray
 
 from bemt.air import Air
 from bemt.drive import BarePropeller, Battery, Controller, Drive, Motor, OperatingPoints
+from bemt.drive.discharge import drain_time_at_throttle
 from bemt.drive.loads import PropellerLoads
 from bemt.drive.roots import FloatArray
 from bemt.errors import InputError
-from bemt.flight.airframe import Airframe, Installation
+from bemt.flight.airframe import Airframe, Installation, Multirotor
+from bemt.flight.decisions import describe_flight
+from bemt.flight.hover import UprightFlight, figure_of_merit
 from bemt.flight.level import (
     LevelFlight,
     Points,
     Source,
-    cost,
+    ends_at_full_throttle,
     endurance,
     last_fall,
     pitch_speed,
     place_of_largest,
+    staying_power,
 )
-from bemt.flight.limits import Limits, describe_limits
+from bemt.flight.limits import Limits, describe_first_limit, describe_limits
+from bemt.flight.unpowered import unpowered_drag
 from bemt.quantities.checks import ascending_axis, require_positive
 from bemt.quantities.dataset import build_dataset
 from bemt.quantities.registry import (
     ENVELOPE,
+    ENVELOPE_HOVER,
+    ENVELOPE_HOVER_WITHOUT_MOTOR,
     ENVELOPE_WITHOUT_MOTOR,
     STATUS_NOT_CONVERGED,
     STATUS_NOT_RUN,
@@ -43,16 +50,20 @@ if TYPE_CHECKING:
     import xarray as xr
 
 POINTS = ("static", "cruise", "best_endurance", "best_range", "best_climb", "top_speed")
+HOVER_POINTS = ("static", "hover", "best_climb")
+_AT_FULL = ("static", "best_climb", "top_speed")
 
 _DEFAULT_AIRSPEEDS = 61
 _DEFAULT_THROTTLES = 19
 _DEFAULT_RPMS = 19
+_LIMIT_THROTTLES = 41
 _ABOVE_TOP_SPEED = 1.1
 
 # Axes and helpers of the points, which are no results of their own.
 _RESULT_NAMES = {field.name for field in fields(OperatingPoints)} - {"airspeed", "throttle", "duty"}
 
 Values = dict[str, NDArray[Any]]
+Steady = LevelFlight | UprightFlight
 
 
 @dataclass(frozen=True, eq=False)
@@ -74,6 +85,10 @@ class EnvelopeResult:
         Names of the points.
     notes : tuple of str
         What a reader should know, in words: limits that bind, points that could not be found.
+    decisions : tuple of str
+        What a builder decides by, in words.
+    hovers : bool
+        Whether the airframe has no wing: the airspeed is then that of climbing straight up.
     """
 
     airspeed: FloatArray
@@ -82,6 +97,8 @@ class EnvelopeResult:
     values: Mapping[str, NDArray[Any]]
     points: tuple[str, ...]
     notes: tuple[str, ...]
+    decisions: tuple[str, ...] = ()
+    hovers: bool = False
 
     def to_dataset(self, attrs: Mapping[str, Any]) -> xr.Dataset:
         """Label the arrays.
@@ -89,7 +106,7 @@ class EnvelopeResult:
         Parameters
         ----------
         attrs : mapping
-            Attributes of the dataset; notes of the envelope are added to any there.
+            Attributes of the dataset; notes of the envelope are added to any there, and `decisions`.
 
         Returns
         -------
@@ -101,13 +118,17 @@ class EnvelopeResult:
         if self.rpm is not None:
             coordinates["rpm"] = self.rpm
         coordinates["point"] = np.array(self.points)
-        group = ENVELOPE if self.rpm is None else ENVELOPE_WITHOUT_MOTOR
+        if self.hovers:
+            group = ENVELOPE_HOVER if self.rpm is None else ENVELOPE_HOVER_WITHOUT_MOTOR
+        else:
+            group = ENVELOPE if self.rpm is None else ENVELOPE_WITHOUT_MOTOR
         notes = "\n".join(part for part in (str(attrs.get("notes", "")), *self.notes) if part)
         axes = {"V": self.airspeed} | {
             name: axis for name, axis in (("throttle", self.throttle), ("rpm", self.rpm)) if axis is not None
         }
         trust = "\n".join(trust_in_words(self.values["trust"], self.values["trust_reasons"], axes))
-        merged = {**attrs, "trust": trust, **({"notes": notes} if notes else {})}
+        said = {"notes": notes, "decisions": "\n".join(self.decisions)}
+        merged = {**attrs, "trust": trust, **{name: words for name, words in said.items() if words}}
         return build_dataset(group, self.values, coordinates, merged)
 
 
@@ -118,7 +139,7 @@ def build_envelope(
     motor: Motor | None = None,
     controller: Controller | None = None,
     battery: Battery | None = None,
-    airframe: Airframe | None = None,
+    airframe: Airframe | Multirotor | None = None,
     installation: Installation | None = None,
     rpm_limit: float | None = None,
     airspeed: ArrayLike | None = None,
@@ -139,7 +160,7 @@ def build_envelope(
         Without one an ideal controller.
     battery : Battery, optional
         Needed with a motor.
-    airframe : Airframe, optional
+    airframe : Airframe or Multirotor, optional
         Without one there is no level flight, and standing still is the only named point.
     installation : Installation, optional
         Without one a free propeller.
@@ -168,40 +189,55 @@ def build_envelope(
     -----
     The named points do not depend on the axes asked for: they are searched between the slowest level flight and the top
     speed and refined. Without a motor, best endurance and range are those of least shaft power, per time and distance.
+    For a multirotor the airspeed is that of climbing straight up, `level_*` the steady climb at it, hovering at 0;
+    without a motor one propeller carries the whole mass.
     """
     if rpm_limit is not None:
         require_positive("rpm_limit", rpm_limit, "rpm")
     fitted = installation or Installation()
     source = _source(lookup, air, motor, controller, battery, fitted, rpm, rpm_limit)
     limits = Limits.of(source, rpm_limit) if isinstance(source, Drive) else Limits(rpm=rpm_limit)
-    flight = None if airframe is None else LevelFlight(source, airframe, air.density, fitted.thrust_factor)
-    top_speed, end = (math.nan, math.nan) if flight is None else flight.fastest()
+    steady = _steady(source, airframe, air, fitted)
+    fastest, end = (math.nan, math.nan) if steady is None else steady.fastest()
     airspeed_axis = _default_axis(source, end) if airspeed is None else ascending_axis("airspeed", airspeed)
 
     grid: Points
     throttle_axis, rpm_axis = None, None
     if isinstance(source, Drive):
         throttle_axis = default_throttle() if throttle is None else ascending_axis("throttle", throttle)
-        grid = source.at_throttle(airspeed_axis[:, np.newaxis], throttle_axis)
+        settings = throttle_axis
+        grid = source.at_throttle(airspeed_axis[:, np.newaxis], settings)
         values = _named(grid, _RESULT_NAMES) | limits.margins(grid)
     else:
         rpm_axis = _rpm_axis(rpm, rpm_limit)
-        grid = source.at_rpm(airspeed_axis[:, np.newaxis], rpm_axis)
+        settings = rpm_axis
+        grid = source.at_rpm(airspeed_axis[:, np.newaxis], settings)
         values = _named(grid, _RESULT_NAMES - {"rpm"})
     notes = _grid_notes(grid)
 
-    if flight is not None:
-        values |= _level_values(flight, airspeed_axis, limits, battery)
-        notes += _flight_notes(flight, top_speed, end)
-    point_values, point_notes = _point_values(source, flight, top_speed, end, limits, battery)
-    values |= point_values
+    if not isinstance(steady, UprightFlight):
+        values |= unpowered_drag(source, airspeed_axis)
+    if steady is not None:
+        held = steady.at(airspeed_axis)
+        values |= _steady_values(steady, held, airspeed_axis, limits)
+        if isinstance(steady, LevelFlight):
+            values["climb_rate"] = steady.climb_rate(airspeed_axis)
+        else:
+            values["climb_rate"] = steady.climb_rate(settings)
+        notes += _flight_notes(steady, fastest, end)
+        notes += _endurance_notes(steady, held)
+    names, points, point_notes = _named_points(source, steady, fastest, end)
+    values |= _point_table(source, steady, names, points, limits)
     notes += point_notes
+
+    decisions = [] if steady is None else list(describe_flight(steady, points, names))
     if throttle_axis is not None:
+        decisions += _first_limit(source, steady, end, limits)
         notes += describe_limits(limits, airspeed_axis, throttle_axis, values)
-    points = POINTS if flight is not None else POINTS[:1]
     if isinstance(source, Drive):
-        notes += _winding_notes(source, values, points)
-    return EnvelopeResult(airspeed_axis, throttle_axis, rpm_axis, values, points, tuple(notes))
+        notes += _winding_notes(source, values, names)
+    hovers = isinstance(steady, UprightFlight)
+    return EnvelopeResult(airspeed_axis, throttle_axis, rpm_axis, values, names, tuple(notes), tuple(decisions), hovers)
 
 
 def default_throttle() -> FloatArray:
@@ -222,7 +258,7 @@ def default_airspeed(
     motor: Motor | None = None,
     controller: Controller | None = None,
     battery: Battery | None = None,
-    airframe: Airframe | None = None,
+    airframe: Airframe | Multirotor | None = None,
     installation: Installation | None = None,
     rpm_limit: float | None = None,
     rpm: ArrayLike | None = None,
@@ -237,8 +273,8 @@ def default_airspeed(
     Returns
     -------
     numpy.ndarray, shape (61,)
-        From 0 to a tenth above the top speed, or, where there is none, above the airspeed of zero thrust at full
-        throttle; the end is a whole number of m/s.
+        From 0 to a tenth above the top speed or the fastest climb, or, where there is none, above the airspeed of zero
+        thrust at full throttle; the end is a whole number of m/s.
 
     Raises
     ------
@@ -247,8 +283,8 @@ def default_airspeed(
     """
     fitted = installation or Installation()
     source = _source(lookup, air, motor, controller, battery, fitted, rpm, rpm_limit)
-    flight = None if airframe is None else LevelFlight(source, airframe, air.density, fitted.thrust_factor)
-    return _default_axis(source, math.nan if flight is None else flight.fastest()[1])
+    steady = _steady(source, airframe, air, fitted)
+    return _default_axis(source, math.nan if steady is None else steady.fastest()[1])
 
 
 def _default_axis(source: Source, end: float) -> FloatArray:
@@ -284,6 +320,16 @@ def _source(
     )
 
 
+def _steady(
+    source: Source, airframe: Airframe | Multirotor | None, air: Air, installation: Installation
+) -> Steady | None:
+    if airframe is None:
+        return None
+    if isinstance(airframe, Multirotor):
+        return UprightFlight(source, airframe, installation.thrust_factor)
+    return LevelFlight(source, airframe, air.density, installation.thrust_factor)
+
+
 def _rpm_axis(rpm: ArrayLike | None, rpm_limit: float | None) -> FloatArray:
     if rpm is None:
         if rpm_limit is None:
@@ -299,15 +345,15 @@ def _named(points: Points, names: set[str], prefix: str = "") -> Values:
     return {prefix + field.name: getattr(points, field.name) for field in fields(points) if field.name in names}
 
 
-def _level_values(flight: LevelFlight, airspeed: FloatArray, limits: Limits, battery: Battery | None) -> Values:
-    points = flight.at(airspeed)
+def _steady_values(steady: Steady, points: Points, airspeed: FloatArray, limits: Limits) -> Values:
     values = _flying(points, limits, "level_")
-    values["drag"] = flight.drag(airspeed)
-    values["climb_rate"] = flight.climb_rate(airspeed)
+    values["drag"] = steady.drag(airspeed)
+    values["required_thrust"] = steady.required_thrust(airspeed)
     if isinstance(points, OperatingPoints):
         values["level_throttle"] = points.throttle
-        values["endurance"] = endurance(points, battery)
-        values["range"] = values["endurance"] * airspeed
+        values["endurance"] = endurance(steady.source, points)
+        if isinstance(steady, LevelFlight):
+            values["range"] = values["endurance"] * airspeed
     return values
 
 
@@ -319,39 +365,31 @@ def _flying(points: Points, limits: Limits, prefix: str) -> Values:
     return values | {prefix + name: margin for name, margin in limits.margins(points).items()}
 
 
-def _point_values(
-    source: Source,
-    flight: LevelFlight | None,
-    top_speed: float,
-    end: float,
-    limits: Limits,
-    battery: Battery | None,
-) -> tuple[Values, list[str]]:
-    if flight is None:
-        standing = source.at_full(np.zeros(1))
-        return _point_table(standing, np.zeros(1), limits, battery, np.full(1, np.nan), level=[]), []
-
-    notes = []
-    slow, far, climb = _outstanding_airspeeds(flight, end)
-    cruise = far if flight.airframe.cruise_speed is None else flight.airframe.cruise_speed
-    airspeed = np.array([0.0, cruise, slow, far, climb, top_speed])
-    level_points = [POINTS.index(name) for name in ("cruise", "best_endurance", "best_range")]
-    full_points = [POINTS.index(name) for name in ("static", "best_climb", "top_speed")]
-    points = _merge(
-        airspeed.size,
-        (level_points, flight.at(airspeed[level_points])),
-        (full_points, _at_known(source, airspeed[full_points])),
-    )
-    climbs = POINTS.index("best_climb")
-    climb_rate = np.full(airspeed.size, np.nan)
-    if np.isfinite(climb):
-        climb_rate[climbs] = flight.climb_rate(airspeed[climbs : climbs + 1])[0]
-    if flight.airframe.cruise_speed is None and np.isfinite(cruise):
-        notes.append(f"no cruise speed given: the point cruise is that of best range, {cruise:.1f} m/s")
-    elif np.isnan(points.rpm[1]) and np.isfinite(cruise):
-        notes.append(f"no level flight at the cruise speed of {cruise:.1f} m/s")
-    level = [*level_points, POINTS.index("top_speed")]
-    return _point_table(points, airspeed, limits, battery, climb_rate, level=level), notes
+def _named_points(
+    source: Source, steady: Steady | None, fastest: float, end: float
+) -> tuple[tuple[str, ...], Points, list[str]]:
+    """Return the names, the points, and what is to be said of those that are not as asked for."""
+    notes: list[str] = []
+    if steady is None:
+        return POINTS[:1], source.at_full(np.zeros(1)), notes
+    names: tuple[str, ...]
+    if isinstance(steady, UprightFlight):
+        names, speeds = HOVER_POINTS, {"static": 0.0, "hover": 0.0, "best_climb": fastest}
+    else:
+        slow, far, climb = _outstanding_airspeeds(steady, end)
+        cruise = far if steady.airframe.cruise_speed is None else steady.airframe.cruise_speed
+        names, speeds = POINTS, dict(zip(POINTS, (0.0, cruise, slow, far, climb, fastest), strict=True))
+    airspeed = np.array([speeds[name] for name in names])
+    full = [k for k, name in enumerate(names) if name in _AT_FULL]
+    held = [k for k, name in enumerate(names) if name not in _AT_FULL]
+    points = _merge(airspeed.size, (held, steady.at(airspeed[held])), (full, _at_known(source, airspeed[full])))
+    points = replace(points, airspeed=airspeed)
+    if isinstance(steady, LevelFlight):
+        if steady.airframe.cruise_speed is None and np.isfinite(cruise):
+            notes.append(f"no cruise speed given: the point cruise is that of best range, {cruise:.1f} m/s")
+        elif np.isnan(points.rpm[names.index("cruise")]) and np.isfinite(cruise):
+            notes.append(f"no level flight at the cruise speed of {cruise:.1f} m/s")
+    return names, points, notes
 
 
 def _outstanding_airspeeds(flight: LevelFlight, end: float) -> tuple[float, float, float]:
@@ -359,11 +397,11 @@ def _outstanding_airspeeds(flight: LevelFlight, end: float) -> tuple[float, floa
     if math.isnan(end):
         return math.nan, math.nan, math.nan
     axis = flight.axis_of_flight(end)
-    drawn = cost(flight.at(axis))
+    staying = staying_power(flight.source, flight.at(axis))
     climb_rate = flight.climb_rate(axis)
     return (
-        place_of_largest(axis, -drawn),
-        place_of_largest(axis, axis / drawn),
+        place_of_largest(axis, staying),
+        place_of_largest(axis, axis * staying),
         place_of_largest(axis, np.where(climb_rate > 0.0, climb_rate, np.nan)),
     )
 
@@ -388,22 +426,47 @@ def _merge(size: int, *parts: tuple[list[int], Points]) -> Points:
 
 
 def _point_table(
-    points: Points,
-    airspeed: FloatArray,
-    limits: Limits,
-    battery: Battery | None,
-    climb_rate: FloatArray,
-    level: list[int],
+    source: Source, steady: Steady | None, names: tuple[str, ...], points: Points, limits: Limits
 ) -> Values:
     values = _flying(points, limits, "point_")
+    airspeed = points.airspeed
+    at_full = np.isin(names, _AT_FULL)
     values["point_airspeed"] = airspeed
-    values["point_climb_rate"] = climb_rate
-    if isinstance(points, OperatingPoints):
-        is_level = np.isin(np.arange(airspeed.size), level)
+    if isinstance(source, Drive) and isinstance(points, OperatingPoints):
         values["point_throttle"] = points.throttle
-        values["point_endurance"] = np.where(is_level, endurance(points, battery), np.nan)
-        values["point_range"] = values["point_endurance"] * airspeed
+        values["point_drain_time"] = np.full(airspeed.shape, np.nan)
+        there = at_full & np.isfinite(airspeed)
+        values["point_drain_time"][there] = drain_time_at_throttle(source, airspeed[there], 1.0)
+        if steady is not None:
+            values["point_endurance"] = np.where(at_full, np.nan, endurance(source, points))
+    if steady is None:
+        return values
+    values["point_thrust_to_weight"] = steady.thrust_factor * points.thrust / steady.airframe.weight
+    values["point_climb_rate"] = np.full(airspeed.shape, np.nan)
+    climb = names.index("best_climb")
+    if isinstance(steady, LevelFlight):
+        if "point_endurance" in values:
+            values["point_range"] = values["point_endurance"] * airspeed
+        if np.isfinite(airspeed[climb]):
+            values["point_climb_rate"][climb] = steady.climb_rate(airspeed[climb : climb + 1])[0]
+    else:
+        values["point_climb_rate"][climb] = airspeed[climb]
+        air = source.air or source.propeller.air
+        values["point_figure_of_merit"] = figure_of_merit(points, source.count, source.propeller.diameter, air.density)
     return values
+
+
+def _first_limit(source: Source, steady: Steady | None, end: float, limits: Limits) -> list[str]:
+    """Say which limit is passed first; on axes of its own, as the named points."""
+    if not isinstance(source, Drive):
+        return []
+    standing = source.at_throttle(0.0, np.linspace(0.0, 1.0, _LIMIT_THROTTLES))
+    if steady is None or math.isnan(end):
+        return [describe_first_limit(limits, standing)]
+    upright = isinstance(steady, UprightFlight)
+    held = steady.at(steady.axis_of_flight(end))
+    assert isinstance(held, OperatingPoints)  # of a drive
+    return [describe_first_limit(limits, standing, held, "hover and climb" if upright else "level flight")]
 
 
 def _grid_notes(grid: Points) -> list[str]:
@@ -426,19 +489,39 @@ def _grid_notes(grid: Points) -> list[str]:
     return notes
 
 
-def _flight_notes(flight: LevelFlight, top_speed: float, end: float) -> list[str]:
+def _flight_notes(steady: Steady, fastest: float, end: float) -> list[str]:
     notes = []
-    stall = flight.airframe.stall_speed(flight.density)
+    if isinstance(steady, UprightFlight):
+        if not isinstance(steady.source, Drive):
+            notes.append("no motor in the case, so one propeller carries the whole mass: give its share as the mass")
+        if math.isnan(end):
+            notes.append("it does not hover: weight exceeds the thrust at full throttle")
+        elif math.isnan(fastest):
+            notes.append(f"fastest climb not known: it still climbs at {end:.1f} m/s, where a table ends")
+        if steady.airframe.drag_table is None and not math.isnan(end):
+            notes.append("climb rates are without the drag of the airframe: upper ends")
+        return notes
+    stall = steady.airframe.stall_speed(steady.density)
     if stall is not None:
         notes.append(f"no level flight below the stall speed of {stall:.1f} m/s")
     if math.isnan(end):
         notes.append("no level flight: the drag exceeds the thrust at full throttle at every airspeed")
-    elif math.isnan(top_speed):
+    elif math.isnan(fastest):
         notes.append(
             f"top speed not known: thrust exceeds drag up to {end:.1f} m/s, "
             "where the table of the drag or of the propeller ends"
         )
     return notes
+
+
+def _endurance_notes(steady: Steady, held: Points) -> list[str]:
+    """Say where the falling voltage ends the flight before the charge does."""
+    short = held.airspeed[ends_at_full_throttle(steady.source, held)]
+    if short.size == 0:
+        return []
+    what = "level flight" if isinstance(steady, LevelFlight) else "climb"
+    where = f"at {short[0]:.1f} m/s" if short.size == 1 else f"between {short[0]:.1f} and {short[-1]:.1f} m/s"
+    return [f"{what} {where} ends before the usable charge: full throttle no longer holds it at the falling voltage"]
 
 
 def _winding_notes(drive: Drive, values: Values, points: tuple[str, ...]) -> list[str]:

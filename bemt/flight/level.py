@@ -4,11 +4,14 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 
-from bemt.drive import BarePropeller, Battery, Drive, OperatingPoints, ShaftPoints
+from bemt.drive import BarePropeller, Drive, OperatingPoints, ShaftPoints
+from bemt.drive.circuit import duty_for
+from bemt.drive.discharge import hold_time
 from bemt.drive.loads import RPM_PER_RAD_S
 from bemt.drive.roots import FloatArray, bracketed_root
 from bemt.flight.airframe import Airframe
@@ -71,7 +74,23 @@ class LevelFlight:
         OperatingPoints or ShaftPoints
             Shape of `airspeed`; NaN where there is no level flight.
         """
-        return self.source.at_thrust(airspeed, self.drag(airspeed) / self.thrust_factor)
+        return self.source.at_thrust(airspeed, self.required_thrust(airspeed))
+
+    def required_thrust(self, airspeed: FloatArray) -> FloatArray:
+        """Return the thrust of all propellers that level flight needs [N].
+
+        Parameters
+        ----------
+        airspeed : numpy.ndarray
+            [m/s].
+
+        Returns
+        -------
+        numpy.ndarray
+            Drag over the thrust factor, shape of `airspeed`.
+        """
+        found: FloatArray = self.drag(airspeed) / self.thrust_factor
+        return found
 
     def surplus(self, airspeed: FloatArray) -> FloatArray:
         """Return thrust less drag at full throttle, or at the highest rpm [N].
@@ -138,44 +157,70 @@ class LevelFlight:
         return np.linspace(0.0, end, _PEAK_NODES + 1)[1:]
 
 
-def cost(points: Points) -> FloatArray:
-    """Return what flying costs: battery current [A], or shaft power [W] where the drive is not known.
+def endurance(source: Source, points: Points) -> FloatArray:
+    """Return the time for which points can be held on the usable charge.
 
     Parameters
     ----------
+    source : Drive or BarePropeller
+        What gives the thrust.
     points : OperatingPoints or ShaftPoints
-        Level flight.
+        Steady flight on it.
 
     Returns
     -------
     numpy.ndarray
-        Shape of the points; NaN where nothing is drawn.
+        The discharge integrated [s], with motor current and rpm held while the voltage falls and the duty rises; it
+        ends before the charge where full duty no longer holds them. NaN without a battery and where there is no point.
     """
-    drawn = points.battery_current if isinstance(points, OperatingPoints) else points.shaft_power
-    return np.where(drawn > 0.0, drawn, np.nan)
-
-
-def endurance(points: Points, battery: Battery | None) -> FloatArray:
-    """Return the time aloft.
-
-    Parameters
-    ----------
-    points : OperatingPoints or ShaftPoints
-        Level flight.
-    battery : Battery or None
-        Battery of the drive.
-
-    Returns
-    -------
-    numpy.ndarray
-        Usable charge over the battery current of the charge left at the start [s]; NaN without a battery. The voltage
-        falls and the current rises on the way, so this is the upper end: by some 5 to 8 % for a pack flown from full
-        to a fifth.
-    """
-    if battery is None or not isinstance(points, OperatingPoints):
+    if not isinstance(source, Drive) or not isinstance(points, OperatingPoints):
         return np.full(points.rpm.shape, np.nan)
-    found: FloatArray = battery.usable_charge / cost(points)
-    return found
+    return hold_time(source, points, source.battery)
+
+
+def ends_at_full_throttle(source: Source, points: Points) -> NDArray[np.bool_]:
+    """Say which points the falling voltage ends before the usable charge is gone.
+
+    Parameters
+    ----------
+    source : Drive or BarePropeller
+        What gives the thrust.
+    points : OperatingPoints or ShaftPoints
+        Steady flight on it.
+
+    Returns
+    -------
+    numpy.ndarray of bool
+        True where the duty that holds the point at the end of the usable charge is more than the controller gives.
+    """
+    if not isinstance(source, Drive) or not isinstance(points, OperatingPoints):
+        return np.zeros(points.rpm.shape, dtype=bool)
+    empty = replace(source.battery, charge_left=min(source.battery.lowest_charge, source.battery.charge_left))
+    speed = points.rpm / RPM_PER_RAD_S * source.motor.gear_ratio
+    duty = duty_for(source.motor, source.controller, empty, points.motor_current, speed)
+    return np.isfinite(points.rpm) & ~(duty <= source.controller.full_duty)
+
+
+def staying_power(source: Source, points: Points) -> FloatArray:
+    """Return what is largest where flying costs least per time.
+
+    Parameters
+    ----------
+    source : Drive or BarePropeller
+        What gives the thrust.
+    points : OperatingPoints or ShaftPoints
+        Steady flight on it.
+
+    Returns
+    -------
+    numpy.ndarray
+        Endurance [s]; without a battery, or with no charge to use, the inverse of the shaft power [1/W] or of the
+        battery current [1/A]. NaN where nothing is drawn.
+    """
+    if isinstance(source, Drive) and source.battery.usable_charge > 0.0:
+        return endurance(source, points)
+    drawn = points.battery_current if isinstance(points, OperatingPoints) else points.shaft_power
+    return 1.0 / np.where(drawn > 0.0, drawn, np.nan)
 
 
 def pitch_speed(source: Source) -> float:

@@ -23,6 +23,13 @@ _WORDS = {
     "battery_current": ("battery current, limit {:g} A", "A"),
     "winding_temperature": ("winding temperature if held there, ceiling {:g} degC", "K"),
 }
+_SHORT_WORDS = {
+    "rpm": "the propeller's rpm ({:g} rpm)",
+    "motor_current": "the motor's current ({:g} A)",
+    "controller_current": "the controller's current ({:g} A)",
+    "battery_current": "the battery's current ({:g} A)",
+    "winding_temperature": "the winding's temperature if held there ({:g} degC)",
+}
 _BEYOND_ANY = -1e9  # takes the place of an infinite excess where a straight line is drawn between samples
 
 
@@ -139,7 +146,7 @@ def describe_limits(
         level = f"level_{name}_margin"
         over_level = _negative_spans(airspeed, margin_of(level)) if level in values else []
         if over_level:
-            places.append(f"in level flight {_airspeeds(over_level, airspeed)}")
+            places.append(f"in {_steady(values)} {_airspeeds(over_level, airspeed)}")
         head = f"{words.format(limit)}: "
         if places:
             first = over_throttle[0][0] if over_throttle else float(throttle[-1])
@@ -150,6 +157,59 @@ def describe_limits(
             smallest = float(np.nanmin(margin))
             found.append((np.inf, f"{head}not reached, {smallest:.4g} {unit} left at the closest point"))
     return tuple(sentence for _, sentence in sorted(found, key=lambda pair: pair[0]))
+
+
+def describe_first_limit(
+    limits: Limits, standing: OperatingPoints, held: OperatingPoints | None = None, flight: str = "level flight"
+) -> str:
+    """Say which limit is passed first as the throttle rises, standing still and in steady flight.
+
+    Parameters
+    ----------
+    limits : Limits
+        Those known.
+    standing : OperatingPoints, shape (n,)
+        Standing still, throttles ascending.
+    held : OperatingPoints, shape (m,), optional
+        Steady flight, airspeeds ascending.
+    flight : str
+        What the steady flight is called.
+
+    Returns
+    -------
+    str
+        One sentence.
+    """
+    known = [name for name in _WORDS if getattr(limits, name) is not None]
+    if not known:
+        return "what burns first is not known: the case gives no limit of propeller, motor, controller or battery"
+
+    def spans(points: OperatingPoints, axis: FloatArray, name: str) -> list[tuple[float, float]]:
+        return _negative_spans(axis, np.maximum(limits.margins(points)[f"{name}_margin"], _BEYOND_ANY))
+
+    def first(found: list[tuple[float, str, str]]) -> str:
+        if not found:
+            return "none"
+        at, name, where = min(found)
+        return f"{_SHORT_WORDS[name].format(getattr(limits, name))} from throttle {at:.2f}{where}"
+
+    over_throttle = [(found[0][0], name, "") for name in known if (found := spans(standing, standing.throttle, name))]
+    words = f"first beyond a limit as the throttle rises: standing still {first(over_throttle)}"
+    if held is None or np.isnan(held.throttle).all():
+        return words
+    flown = np.isfinite(held.throttle)
+    steady = [
+        (float(np.interp(edge, held.airspeed[flown], held.throttle[flown])), name, f" at {edge:.1f} m/s")
+        for name in known
+        for span in spans(held, held.airspeed, name)
+        for edge in span
+    ]
+    return f"{words}; in {flight} {first(steady)}"
+
+
+def _steady(values: Mapping[str, NDArray[np.generic]]) -> str:
+    """Name the steady flight; only what hovers has a figure of merit."""
+    return "hover and climb" if "point_figure_of_merit" in values else "level flight"
 
 
 def _negative_spans(axis: FloatArray, margin: FloatArray) -> list[tuple[float, float]]:

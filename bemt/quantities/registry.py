@@ -469,20 +469,72 @@ def _over(
     )
 
 
+_HELD = "the discharge integrated with motor current and rpm held; ends early where full throttle no longer holds them"
+
 _LEVEL_ONLY = (
     Quantity("level_throttle", "", _SPEED, "1", "throttle, level flight", "stick position that holds level flight"),
     Quantity("drag", "D", _SPEED, "N", "drag of the airframe", "in level flight; missing below the stall speed"),
-    Quantity("endurance", "", _SPEED, "s", "endurance", "time aloft at this airspeed on the usable charge"),
-    Quantity("range", "", _SPEED, "m", "range", "still-air distance at this airspeed on the usable charge"),
+    Quantity(
+        "required_thrust", "", _SPEED, "N", "thrust required", "of all propellers in level flight: drag/thrust factor"
+    ),
+    Quantity("endurance", "", _SPEED, "s", "endurance", f"at this airspeed on the usable charge, {_HELD}"),
+    Quantity("range", "", _SPEED, "m", "range", "still-air distance at this airspeed: endurance times airspeed"),
     Quantity("climb_rate", "", _SPEED, "m s-1", "rate of climb", "at full throttle at this airspeed"),
+)
+
+_UNPOWERED = (
+    Quantity("stopped_drag", "", _SPEED, "N", "drag of stopped propellers", "of all propellers, blades held still"),
+    Quantity(
+        "freewheeling_drag",
+        "",
+        _SPEED,
+        "N",
+        "drag of freewheeling propellers",
+        "of all propellers, turned by the wind against the drag of motor and gear without current",
+    ),
+    Quantity(
+        "freewheeling_rpm", "", _SPEED, "rpm", "freewheeling rotational speed", "0 where the wind does not turn it"
+    ),
+    Quantity(
+        "windmilling_drag",
+        "",
+        _SPEED,
+        "N",
+        "drag of windmilling propellers",
+        "of all propellers, turned by the wind without any torque on the shaft",
+    ),
+    Quantity("windmilling_rpm", "", _SPEED, "rpm", "windmilling rotational speed", "at no torque"),
 )
 
 _POINT_ONLY = (
     Quantity("point_airspeed", "V", ("point",), "m s-1", "airspeed, named point", "of the aircraft"),
     Quantity("point_throttle", "", ("point",), "1", "throttle, named point", "stick position"),
-    Quantity("point_endurance", "", ("point",), "s", "endurance, named point", "missing where flight is not level"),
-    Quantity("point_range", "", ("point",), "m", "range, named point", "missing where flight is not level"),
+    Quantity(
+        "point_endurance",
+        "",
+        ("point",),
+        "s",
+        "endurance, named point",
+        f"{_HELD}; missing at full throttle, which no falling voltage holds",
+    ),
+    Quantity("point_range", "", ("point",), "m", "range, named point", "endurance times airspeed; missing as it is"),
+    Quantity(
+        "point_drain_time",
+        "",
+        ("point",),
+        "s",
+        "time at full throttle, named point",
+        "until the usable charge is gone at full throttle at this airspeed; missing at part throttle",
+    ),
     Quantity("point_climb_rate", "", ("point",), "m s-1", "rate of climb, named point", "missing unless it climbs"),
+    Quantity(
+        "point_thrust_to_weight",
+        "",
+        ("point",),
+        "1",
+        "thrust over weight, named point",
+        "of the thrust that reaches the airframe",
+    ),
 )
 
 ENVELOPE = (
@@ -490,6 +542,7 @@ ENVELOPE = (
     *_MARGINS,
     *_over(_OPERATING + _MARGINS, "level_", _SPEED, "level flight"),
     *_LEVEL_ONLY,
+    *_UNPOWERED,
     *_over(_OPERATING + _MARGINS, "point_", ("point",), "named point"),
     *_POINT_ONLY,
 )
@@ -511,14 +564,85 @@ _BARE_NAMES = (
     "rpm_margin",
 )
 _BARE_OPERATING = tuple(quantity for quantity in _OPERATING + _MARGINS if quantity.name in _BARE_NAMES)
+_BARE_GRID = tuple(replace(quantity, dimensions=_BARE) for quantity in _BARE_OPERATING if "rpm" not in quantity.name)
+_ELECTRICAL = (
+    "level_throttle",
+    "endurance",
+    "range",
+    "freewheeling_drag",
+    "freewheeling_rpm",
+    "point_throttle",
+    "point_endurance",
+    "point_range",
+    "point_drain_time",
+)
+
+
+def _without_motor(quantities: tuple[Quantity, ...]) -> tuple[Quantity, ...]:
+    return tuple(quantity for quantity in quantities if quantity.name not in _ELECTRICAL)
+
 
 # Without a motor the second axis is the rpm and nothing electrical exists; the same names otherwise.
 ENVELOPE_WITHOUT_MOTOR = (
-    *(replace(quantity, dimensions=_BARE) for quantity in _BARE_OPERATING if "rpm" not in quantity.name),
+    *_BARE_GRID,
     *_over(_BARE_OPERATING, "level_", _SPEED, "level flight"),
-    *(quantity for quantity in _LEVEL_ONLY if quantity.name in ("drag", "climb_rate")),
+    *_without_motor(_LEVEL_ONLY + _UNPOWERED),
     *_over(_BARE_OPERATING, "point_", ("point",), "named point"),
-    *(quantity for quantity in _POINT_ONLY if quantity.name in ("point_airspeed", "point_climb_rate")),
+    *_without_motor(_POINT_ONLY),
+)
+
+_UPRIGHT = (
+    Quantity(
+        "level_throttle", "", _SPEED, "1", "throttle, steady climb", "stick position that holds it; hovering at 0"
+    ),
+    Quantity("drag", "D", _SPEED, "N", "drag of the airframe", "climbing straight up; 0 where the case has no table"),
+    Quantity(
+        "required_thrust",
+        "",
+        _SPEED,
+        "N",
+        "thrust required",
+        "of all propellers to hover and climb straight up: (weight + drag)/thrust factor",
+    ),
+    Quantity("endurance", "", _SPEED, "s", "endurance", f"in steady climb, hovering at 0: {_HELD}"),
+)
+_UPRIGHT_CLIMB = Quantity(
+    "climb_rate",
+    "",
+    ("throttle",),
+    "m s-1",
+    "rate of climb",
+    "straight up and steady, where thrust holds weight and drag; missing where it sinks",
+)
+_UPRIGHT_POINT = (
+    *(quantity for quantity in _POINT_ONLY if quantity.name != "point_range"),
+    Quantity(
+        "point_figure_of_merit",
+        "FM",
+        ("point",),
+        "1",
+        "figure of merit, named point",
+        "ideal power T sqrt(T/(2 rho A)) of one rotor over its shaft power; missing in moving air",
+    ),
+)
+
+# A hovering airframe: the airspeed is that of climbing straight up, `level_` a steady climb.
+ENVELOPE_HOVER = (
+    *_OPERATING,
+    *_MARGINS,
+    *_over(_OPERATING + _MARGINS, "level_", _SPEED, "steady climb"),
+    *_UPRIGHT,
+    _UPRIGHT_CLIMB,
+    *_over(_OPERATING + _MARGINS, "point_", ("point",), "named point"),
+    *_UPRIGHT_POINT,
+)
+ENVELOPE_HOVER_WITHOUT_MOTOR = (
+    *_BARE_GRID,
+    *_over(_BARE_OPERATING, "level_", _SPEED, "steady climb"),
+    *_without_motor(_UPRIGHT),
+    replace(_UPRIGHT_CLIMB, dimensions=("rpm",)),
+    *_over(_BARE_OPERATING, "point_", ("point",), "named point"),
+    *_without_motor(_UPRIGHT_POINT),
 )
 
 
