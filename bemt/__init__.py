@@ -11,9 +11,9 @@ from typing import TYPE_CHECKING, Any
 from bemt.version import __version__
 
 if TYPE_CHECKING:
-    from bemt.api import coefficient_table, compare, envelope, load
+    from bemt.api import calibrate_motor, coefficient_table, compare, envelope, load
 
-__all__ = ["__version__", "coefficient_table", "compare", "envelope", "load"]
+__all__ = ["__version__", "calibrate_motor", "coefficient_table", "compare", "envelope", "load"]
 
 
 def __getattr__(name: str) -> Any:

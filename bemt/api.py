@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -15,8 +16,9 @@ if TYPE_CHECKING:
 
     from bemt.case.load import Case
     from bemt.study.compare import Comparison
+    from bemt.study.motor_fit import MotorFit
 
-__all__ = ["coefficient_table", "compare", "envelope", "load"]
+__all__ = ["calibrate_motor", "coefficient_table", "compare", "envelope", "load"]
 
 
 def load(path: str | Path) -> Case:
@@ -188,3 +190,43 @@ def compare(case: Case, *measured: str | Path) -> Comparison:
     if case.installation is None:
         return found
     return replace(found, notes=(*found.notes, "[installation] is not applied to readings of a propeller"))
+
+
+def calibrate_motor(case: Case, *measured: str | Path, held: Sequence[str] = ()) -> MotorFit:
+    """Find the constants of a case's motor from rows of a bench.
+
+    Parameters
+    ----------
+    case : Case
+        From `load`; its `[motor]` is where the search begins, its `[controller]` counts as known.
+    *measured : str or pathlib.Path
+        CSV files of readings of one motor, at least one; several count as one.
+    held : sequence of str, optional
+        Constants that stay as the case has them: "speed_constant", "winding_resistance", "no_load_current".
+
+    Returns
+    -------
+    MotorFit
+        Speed constant, resistance and no-load current with their covariance, what the rows cannot tell, and the motor
+        that has them.
+
+    Raises
+    ------
+    CaseError
+        If anything in a file is wrong, with every complaint found.
+    InputError
+        If no file is named, the case has no motor, or no row says anything of it.
+    RunError
+        If the search does not converge.
+    """
+    from bemt.case.readings import Readings, load_readings
+    from bemt.study.motor_fit import fit_motor
+
+    if not measured:
+        raise InputError("measured", "at least one file of readings is needed")
+    if case.motor is None:
+        raise InputError("motor", "the case has no [motor]; give it one with the speed_constant of the label")
+    diameter = case.propeller.diameter
+    parts = [load_readings(path, diameter=diameter, air=case.air) for path in measured]
+    readings = Readings.joined(parts)
+    return fit_motor(readings, case.controller, start=case.motor, diameter=diameter, held=held)

@@ -25,15 +25,15 @@ from bemt.figures.style import INK, LIMIT, QUIET, our_style, save
 DOCS = Path(__file__).parent
 CASE = DOCS.parent / "cases" / "sandpiper.toml"
 COLOURS = 128
-WIDTH = 1200
+WIDTHS = {"table": 1200, "envelope": 1080}
 
 
-def store_small(drawn: Path, target: Path) -> None:
+def store_small(drawn: Path, target: Path, width: int = 1200) -> None:
     """Store a picture with fewer points and colours."""
     with Image.open(drawn) as picture:
         narrow = picture.convert("RGB")
-        if narrow.width > WIDTH:
-            narrow = narrow.resize((WIDTH, round(narrow.height * WIDTH / narrow.width)), Image.Resampling.LANCZOS)
+        if narrow.width > width:
+            narrow = narrow.resize((width, round(narrow.height * width / narrow.width)), Image.Resampling.LANCZOS)
         small = narrow.quantize(COLOURS, kmeans=10, dither=Image.Dither.NONE)
     small.save(target, optimize=True)
 
@@ -137,7 +137,7 @@ def main() -> None:
     axes = DOCS / "images" / "axes.svg"
     draw_axes(axes)
     print(f"{axes}: {axes.stat().st_size} bytes")
-    for command in () if "axes" in sys.argv[1:] else ("table", "envelope"):
+    for command, width in () if "axes" in sys.argv[1:] else WIDTHS.items():
         with tempfile.TemporaryDirectory() as folder:
             drawn = Path(folder) / "figure.png"
             subprocess.run(
@@ -147,7 +147,7 @@ def main() -> None:
                 cwd=DOCS.parent,
             )
             target = DOCS / "images" / f"sandpiper_{command}.png"
-            store_small(drawn, target)
+            store_small(drawn, target, width)
         print(f"{target}: {target.stat().st_size} bytes")
 
 

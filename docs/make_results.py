@@ -14,6 +14,7 @@ from pathlib import Path
 from bemt.quantities.registry import (
     COORDINATES,
     ENVELOPE,
+    ENVELOPE_HOVER,
     ENVELOPE_WITHOUT_MOTOR,
     INCIDENCE,
     LOOKUP,
@@ -76,6 +77,13 @@ def generated() -> str:
         if quantity.dimensions == ("airspeed",) and not quantity.name.startswith("level_")
     )
     without = tuple(quantity for quantity in ENVELOPE_WITHOUT_MOTOR if quantity.dimensions == ("airspeed", "rpm"))
+    known = by_name(ENVELOPE)
+    repeated_upright = {f"level_{quantity.name}" for quantity in grid}
+    upright = tuple(
+        quantity
+        for quantity in ENVELOPE_HOVER
+        if quantity != known.get(quantity.name) and quantity.name not in repeated_upright
+    )
     parts: list[Iterator[str] | list[str]] = [
         ["", "## Codes", "", "`status`, the worst of the blade elements of a point:", ""],
         codes(STATUS_FLAGS),
@@ -102,7 +110,16 @@ def generated() -> str:
         rows(own_point),
         ["", "Without a motor the axes are `airspeed` and `rpm`, and what remains is:", ""],
         textwrap.wrap(", ".join(f"`{quantity.name}`" for quantity in without) + ",", 120),
-        ["with `level_` and `point_` accordingly, `drag`, `climb_rate`, `point_airspeed` and `point_climb_rate`."],
+        [
+            "with `level_` and `point_` accordingly, `drag`, `required_thrust`, `climb_rate`, drag and rpm of stopped",
+            "and windmilling propellers, `point_airspeed`, `point_climb_rate` and `point_thrust_to_weight`.",
+            "",
+            "Of a hovering airframe, where `airspeed` is that of climbing straight up and `level_` means a steady",
+            "climb, these differ. Range and the drag of unpowered propellers are left out; without a motor",
+            "`climb_rate` is over `rpm`.",
+            "",
+        ],
+        rows(upright),
     ]
     assert set(repeated) == {quantity.name for quantity in grid}
     return "\n".join(line for part in parts for line in part) + "\n"

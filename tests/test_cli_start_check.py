@@ -45,7 +45,7 @@ def test_version_and_commands() -> None:
     assert run("--version") == (0, f"bemt {__version__}\n", "")
     _, shown, _ = run("--help")
     listed = [line.split()[0] for line in shown.partition("Commands:")[2].splitlines() if line.strip()]
-    assert listed == ["start", "check", "table", "envelope", "compare"]
+    assert listed == ["start", "check", "table", "envelope", "compare", "calibrate"]
 
 
 def test_wrong_usage_is_2() -> None:

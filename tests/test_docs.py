@@ -21,7 +21,7 @@ from pydantic import BaseModel
 from bemt.case import models
 from bemt.case.schema import check_keys
 from bemt.cli.main import main
-from bemt.quantities.registry import ENVELOPE, ENVELOPE_WITHOUT_MOTOR, LOOKUP, RADIAL, TABLE
+from bemt.quantities.registry import ENVELOPE, ENVELOPE_HOVER, ENVELOPE_WITHOUT_MOTOR, LOOKUP, RADIAL, TABLE
 
 ROOT = Path(__file__).parent.parent
 PAGES = sorted([*ROOT.glob("*.md"), *ROOT.glob("docs/*.md"), *ROOT.glob("benchmarks/*.md")])
@@ -122,7 +122,7 @@ def outputs(tmp_path_factory: pytest.TempPathFactory) -> dict[str, str]:
 
 
 def test_the_commands_of_the_pages_run(outputs: dict[str, str]) -> None:
-    assert {line.split()[1] for line in outputs} == {"start", "check", "table", "envelope", "compare"}
+    assert {line.split()[1] for line in outputs} == {"start", "check", "table", "envelope", "compare", "calibrate"}
 
 
 def test_numbers_quoted_in_the_readme_are_those_that_are_printed(outputs: dict[str, str]) -> None:
@@ -181,7 +181,7 @@ def test_the_nomenclature_is_in_step_with_the_registry() -> None:
     text = (ROOT / "docs" / "results.md").read_text(encoding="utf-8")
     assert script("make_results").page(text) == text
     prefixes = [prefix for prefix in ("level_", "point_") if f"prefix `{prefix}`" in text]
-    for quantity in (*TABLE, *RADIAL, *LOOKUP, *ENVELOPE, *ENVELOPE_WITHOUT_MOTOR):
+    for quantity in (*TABLE, *RADIAL, *LOOKUP, *ENVELOPE, *ENVELOPE_WITHOUT_MOTOR, *ENVELOPE_HOVER):
         bare = [quantity.name.removeprefix(prefix) for prefix in prefixes]
         assert any(f"`{name}`" in text for name in (quantity.name, *bare)), quantity.name
 

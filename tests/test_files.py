@@ -10,6 +10,7 @@ from pathlib import Path
 import netCDF4
 import numpy as np
 import pytest
+import shipped
 import synthetic
 import xarray as xr
 
@@ -337,3 +338,27 @@ def test_a_table_read_back_answers_look_ups_as_before(tmp_path: Path) -> None:
     # At a point of the grid the look-up interpolates what the table solved.
     solved = float(table["thrust_coefficient"].sel(advance_ratio=0.0)[0])
     assert float(after["thrust_coefficient"][0]) == pytest.approx(solved, rel=5e-3)
+
+
+def test_printed_envelope_says_what_is_decided_by() -> None:
+    lines = envelope_text(synthetic.envelope()).splitlines()
+    assert "- Cruise at 16.0 m/s takes 49 % throttle, above the usual 30 to 40 % (common practice, no source)." in lines
+    static = next(line for line in lines if line.startswith("static"))
+    assert "4.7" in static.split()  # 280 s at full throttle
+    assert all(len(line) <= 130 for line in lines)
+
+
+def test_printed_envelope_of_what_hovers(tmp_path: Path) -> None:
+    run = bemt.envelope(shipped.case("mudlark_hover"), table=shipped.table("mudlark_hover"))
+    lines = envelope_text(run).splitlines()
+    hover = next(line for line in lines if line.startswith("hover")).split()
+    assert float(hover[1]) == 0.0
+    assert f"{float(run['point_figure_of_merit'].sel(point='hover')):.2f}" in hover
+    assert "Climbing straight up, hovering at 0 m/s:" in lines
+    assert not any("range" in line for line in lines)
+    assert {path.name for path in write(run, tmp_path / "run.csv")} == {
+        "run.csv",
+        "run_level.csv",
+        "run_points.csv",
+        "run_throttle.csv",
+    }

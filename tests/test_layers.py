@@ -12,7 +12,7 @@ import pytest
 
 import bemt
 
-HEAVY = {"numpy", "scipy", "numba", "llvmlite", "xarray", "pandas", "matplotlib", "netCDF4", "pint"}
+HEAVY = {"numpy", "scipy", "numba", "llvmlite", "xarray", "pandas", "matplotlib", "netCDF4", "pint", "tomlkit"}
 PACKAGE = Path(bemt.__file__).parent
 
 
@@ -27,7 +27,7 @@ def test_import_loads_nothing_heavy() -> None:
     assert loaded_by("import bemt; bemt.__version__, dir(bemt)") & HEAVY == set()
 
 
-@pytest.mark.parametrize("arguments", [[], ["table"], ["envelope"], ["check"], ["start"], ["compare"]])
+@pytest.mark.parametrize("arguments", [[], ["table"], ["envelope"], ["check"], ["start"], ["compare"], ["calibrate"]])
 def test_help_loads_nothing_heavy(arguments: list[str]) -> None:
     code = f"""
 from bemt.cli.main import main
@@ -45,7 +45,7 @@ def test_writers_are_found_without_loading_them() -> None:
 
 
 def test_public_names_are_there_and_only_those() -> None:
-    assert set(bemt.__all__) == {"__version__", "coefficient_table", "compare", "envelope", "load"}
+    assert set(bemt.__all__) == {"__version__", "calibrate_motor", "coefficient_table", "compare", "envelope", "load"}
     assert set(bemt.__all__) <= set(dir(bemt))
     for name in set(bemt.__all__) - {"__version__"}:
         assert callable(getattr(bemt, name))

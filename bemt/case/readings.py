@@ -105,6 +105,8 @@ class Readings:
         Standard uncertainties by the names of the fields above, in their units; NaN likewise.
     notes : tuple of str
         What a user must be told: air that was taken from elsewhere, columns passed over.
+    places : tuple of str, length n or 0
+        File and line of each reading, where they come from a file.
 
     Raises
     ------
@@ -126,6 +128,7 @@ class Readings:
     duty: FloatArray | None = None
     uncertainties: Mapping[str, FloatArray] = field(default_factory=dict)
     notes: tuple[str, ...] = ()
+    places: tuple[str, ...] = ()
 
     def __post_init__(self) -> None:
         if np.ndim(self.rpm) != 1 or np.size(self.rpm) == 0:
@@ -143,6 +146,8 @@ class Readings:
                 raise InputError(name, "must be more than 0 in every reading")
         if not ((self.airspeed >= 0.0) & np.isfinite(self.airspeed)).all():
             raise InputError("airspeed", "must not be negative")
+        if len(self.places) not in (0, np.size(self.rpm)):
+            raise InputError("places", f"{len(self.places)} places do not fit {np.size(self.rpm)} readings")
 
     @property
     def turns(self) -> FloatArray:
@@ -164,7 +169,8 @@ class Readings:
         kept = {name: getattr(self, name)[rows] for name in _ALWAYS}
         kept |= {name: getattr(self, name)[rows] for name in MEASURED if getattr(self, name) is not None}
         spreads = {name: values[rows] for name, values in self.uncertainties.items()}
-        return replace(self, **kept, uncertainties=spreads)
+        places = tuple(place for place, keep in zip(self.places, rows, strict=False) if keep)
+        return replace(self, **kept, uncertainties=spreads, places=places)
 
     @classmethod
     def joined(cls, parts: Sequence[Readings]) -> Readings:
@@ -203,6 +209,7 @@ class Readings:
             source=", ".join(part.source for part in parts),
             uncertainties={name: value for name, value in spreads.items() if value is not None},
             notes=tuple(dict.fromkeys(note for part in parts for note in part.notes)),
+            places=tuple(place for part in parts for place in part.places) if all(p.places for p in parts) else (),
             **values,
         )
 
@@ -351,6 +358,7 @@ def _to_si(sheet: Sheet, diameter: float, air: Air, complaints: Complaints) -> R
         speed_of_sound=sound,
         uncertainties=spreads,
         notes=tuple(notes),
+        places=tuple(f"{sheet.file}:{line}" for line in sheet.lines),
         **measured,
     )
 

@@ -41,8 +41,9 @@ def _figure(run: xr.Dataset) -> Figure:
 def command(case: str, outputs: tuple[str, ...], figure: str | None, strict: bool) -> None:
     """Compute what the propeller does on its motor, battery and airframe.
 
-    Thrust, currents, rpm and power over airspeed and throttle, level flight, and the points a builder asks for.
-    Without -o a short table goes to standard output. CASE may be - for standard input.
+    Thrust, currents, rpm and power over airspeed and throttle, level flight or hover, and the points a builder asks
+    for, with what he decides by in words. Without -o a short table goes to standard output. CASE may be - for standard
+    input.
     """
     check_targets(outputs, figure)
     import bemt

@@ -11,7 +11,7 @@ import click
 from bemt.errors import BemtError
 from bemt.version import __version__
 
-COMMANDS = ("start", "check", "table", "envelope", "compare")
+COMMANDS = ("start", "check", "table", "envelope", "compare", "calibrate")
 """Each stands in the module of its name, as `command`."""
 
 
