@@ -103,7 +103,7 @@ def _sections(case: Case) -> list[str]:
     outside = blade_elements(case.propeller, case.model).outside_share
     if outside > 0.0:
         lines.append(
-            f"{100 * outside:.2g} % of the span (weighted by r^2 chord) leaves the thickness or camber its family was "
+            f"{100 * outside:.3g} % of the span (weighted by r^2 chord) leaves the thickness or camber its family was "
             "made for: the nearest member serves there"
         )
     if case.model.drag_scale != 1.0:

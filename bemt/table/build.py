@@ -217,7 +217,7 @@ def _notes(elements: BladeElements, propeller: Propeller, grid: Grid) -> tuple[s
     share = elements.outside_share
     if share > 0.0:
         notes.append(
-            f"thickness or camber leaves its section data over {100.0 * share:.2g} % of the span (weighted by r^2 "
+            f"thickness or camber leaves its section data over {100.0 * share:.3g} % of the span (weighted by r^2 "
             "chord); the nearest section serves there"
         )
     rigid = rigid_blade_note(propeller, float(grid.rpm[-1]))
