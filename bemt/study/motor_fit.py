@@ -393,8 +393,8 @@ class _Bench:
         if not self.used.any():
             raise InputError(
                 "readings",
-                "no row says anything of the motor; needed: rpm, voltage_V and current_A, and with them torque_Nm or duty, "
-                "or thrust standing still",
+                "no row says anything of the motor; needed: rpm, voltage_V and current_A, and with them torque_Nm or "
+                "duty, or thrust standing still",
             )
         self.power_rows, self.speed_rows = power_rows & self.used, speed_rows & self.used
         self.with_torque, self.with_duty = known["torque"] & self.used, speed_rows & self.used
