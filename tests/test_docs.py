@@ -15,6 +15,7 @@ from typing import Any
 
 import pytest
 import test_nr640
+import xarray as xr
 from click.testing import CliRunner
 from pydantic import BaseModel
 
@@ -165,6 +166,11 @@ def test_python_blocks_run(page: Path, tmp_path: Path, monkeypatch: pytest.Monke
     names: dict[str, Any] = {}
     for number, block in enumerate(blocks(page, "python"), start=1):
         exec(compile(block, f"{page.name}, block {number}", "exec"), names)
+    results = [value for value in names.values() if isinstance(value, (xr.DataArray, xr.Dataset))]
+    for result in results:
+        for array in result.data_vars.values() if isinstance(result, xr.Dataset) else [result]:
+            assert array.size, f"{array.name} is empty"
+    assert len(names) > 1, "the blocks leave nothing behind"  # exec itself leaves __builtins__
 
 
 def script(name: str) -> ModuleType:

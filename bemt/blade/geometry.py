@@ -156,7 +156,11 @@ class Propeller:
         if not 0 < self.diameter < np.inf:
             raise InputError("diameter", f"{self.diameter:g} m; a diameter must be positive")
         if not 0 <= self.hub_diameter < self.diameter:
-            raise InputError("hub_diameter", f"{self.hub_diameter:g} m; a hub must be smaller than the propeller")
+            raise InputError(
+                "hub_diameter",
+                f"{self.hub_diameter:g} m; a hub must be smaller than the propeller of {self.diameter:g} m: are "
+                "the units right?",
+            )
         if self.root >= self.stations.r_over_R[-1]:
             raise InputError(
                 "hub_diameter",

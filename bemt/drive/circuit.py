@@ -45,7 +45,12 @@ class Circuit:
 
 
 def solve_circuit(
-    motor: Motor, controller: Controller, battery: Battery, duty: ArrayLike, motor_speed: ArrayLike
+    motor: Motor,
+    controller: Controller,
+    battery: Battery,
+    duty: ArrayLike,
+    motor_speed: ArrayLike,
+    open_circuit_voltage: ArrayLike | None = None,
 ) -> Circuit:
     """Return currents and voltages of the drive at a duty and motor speed.
 
@@ -61,6 +66,8 @@ def solve_circuit(
         0 to 1.
     motor_speed : array_like
         Angular speed before the gear [rad/s], not negative; broadcast against `duty`.
+    open_circuit_voltage : array_like, optional
+        Of the pack [V], of the shape that duty and speed broadcast to or less; default that of its charge left.
 
     Returns
     -------
@@ -83,6 +90,7 @@ def solve_circuit(
     through the controller's diodes whatever the setting; that is not modelled.
     """
     duty, motor_speed = np.broadcast_arrays(np.asarray(duty, np.float64), np.asarray(motor_speed, np.float64))
+    rest = battery.open_circuit_voltage if open_circuit_voltage is None else np.asarray(open_circuit_voltage)
     chops = (duty > 0.0) & (duty < 1.0)
     switching = np.where(chops, controller.switching_share, 0.0)
     back_emf = motor_speed * motor.torque_constant
@@ -90,7 +98,7 @@ def solve_circuit(
     swing = _swing_per_volt(motor, controller, duty)
     conductance = _ripple_conductance(motor, controller, duty)
     relief = 1.0 / (1.0 + shared * conductance)
-    drive = duty * (battery.open_circuit_voltage - shared * controller.idle_current) * relief - back_emf
+    drive = duty * (rest - shared * controller.idle_current) * relief - back_emf
     if controller.diode_voltage:
         drive = drive - np.where(chops, (1.0 - duty) * controller.diode_voltage, 0.0)
     resistance = (
@@ -103,7 +111,7 @@ def solve_circuit(
         current = np.where(duty > 0.0, np.maximum(current, 0.0), current)
     flows = current != 0.0
     drawn = motor.count * (duty * current + switching * np.abs(current) + controller.idle_current)
-    voltage = (battery.open_circuit_voltage - battery.resistance * drawn) * np.where(flows, relief, 1.0)
+    voltage = (rest - battery.resistance * drawn) * np.where(flows, relief, 1.0)
     return Circuit(
         motor_current=current,
         ripple_current=np.where(flows, swing * voltage, 0.0),

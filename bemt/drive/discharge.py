@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
-from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -134,12 +133,9 @@ def drain_time_at_throttle(drive: Drive, airspeed: ArrayLike, throttle: ArrayLik
     air_axis, stick = np.broadcast_arrays(np.asarray(airspeed, np.float64), np.asarray(throttle, np.float64))
 
     def drawn(charge: FloatArray) -> FloatArray:
-        found = np.empty((air_axis.size, *charge.shape[1:]))
-        for place in np.ndindex(charge.shape[1:]):
-            at_charge = replace(drive.battery, charge_left=float(charge[(0, *place)]))
-            at = replace(drive, battery=at_charge).at_throttle(air_axis.ravel(), stick.ravel())
-            found[(slice(None), *place)] = at.battery_current
-        return found
+        voltage = drive.battery.cells_in_series * cell_voltage(drive.battery.chemistry, charge)
+        here = (slice(None), np.newaxis, np.newaxis)
+        return drive.at_throttle(air_axis.ravel()[here], stick.ravel()[here], voltage).battery_current
 
     return _time(drive.battery, np.array([drive.battery.lowest_charge]), drawn).reshape(air_axis.shape)
 

@@ -146,7 +146,9 @@ class Drive:
         known_air = self.air is not None and self.air.temperature is not None
         return known_air and self.motor.thermal_resistance is not None
 
-    def at_throttle(self, airspeed: ArrayLike, throttle: ArrayLike) -> OperatingPoints:
+    def at_throttle(
+        self, airspeed: ArrayLike, throttle: ArrayLike, open_circuit_voltage: ArrayLike | None = None
+    ) -> OperatingPoints:
         """Return the equilibrium at each airspeed and throttle, the glide included.
 
         Parameters
@@ -155,6 +157,8 @@ class Drive:
             Of the aircraft [m/s], not negative.
         throttle : array_like
             Stick, 0 to 1; broadcast against `airspeed`.
+        open_circuit_voltage : array_like, optional
+            Of the battery [V], not above that of its charge left, which is the default; broadcast against the others.
 
         Returns
         -------
@@ -173,9 +177,12 @@ class Drive:
         have more: the fastest is taken, which is where a propeller throttled down in flight comes to rest. Where the
         drive cannot overcome its own friction the propeller stands still, rpm 0.
         """
-        air_axis, stick = np.broadcast_arrays(_checked_airspeed(airspeed), _checked_throttle(throttle))
+        given = self.battery.open_circuit_voltage if open_circuit_voltage is None else open_circuit_voltage
+        air_axis, stick, rest = np.broadcast_arrays(
+            _checked_airspeed(airspeed), _checked_throttle(throttle), np.asarray(given, dtype=np.float64)
+        )
         shape = air_axis.shape
-        flat_airspeed, flat_stick = air_axis.ravel(), stick.ravel()
+        flat_airspeed, flat_stick, voltage = air_axis.ravel(), stick.ravel(), rest.ravel()
         duty = self.controller.duty(flat_stick)
         rows, row = np.unique(flat_airspeed, return_inverse=True)
         curves = load_curves(self.propeller, self.air, rows * self.inflow_factor, self.no_load_speed * _BEYOND_NO_LOAD)
@@ -183,16 +190,18 @@ class Drive:
 
         def surplus(speed: FloatArray, index: IndexArray) -> FloatArray:
             taken = propeller_state(self.propeller, self.air, disk_airspeed[index], speed).torque
-            return self._torque_offered(duty[index], speed) - taken
+            return self._torque_offered(duty[index], speed, voltage[index]) - taken
 
-        nodes = self._torque_offered(duty[:, np.newaxis], curves.speed[row]) - curves.torque[row]
+        offered = self._torque_offered(duty[:, np.newaxis], curves.speed[row], voltage[:, np.newaxis])
+        nodes = offered - curves.torque[row]
         speed = last_falling_crossing(curves, row, nodes, surplus)
         stands_still = np.isnan(speed) & (nodes[:, 0] <= 0.0) & ~np.any(nodes > 0.0, axis=1)
         speed[stands_still] = 0.0
 
         state = propeller_state(self.propeller, self.air, disk_airspeed, speed)
-        circuit = solve_circuit(self.motor, self.controller, self.battery, duty, state.speed * self.motor.gear_ratio)
-        return self._points(flat_airspeed, flat_stick, duty, state, circuit, shape)
+        motor_speed = state.speed * self.motor.gear_ratio
+        circuit = solve_circuit(self.motor, self.controller, self.battery, duty, motor_speed, voltage)
+        return self._points(flat_airspeed, flat_stick, duty, voltage, state, circuit, shape)
 
     def at_thrust(self, airspeed: ArrayLike, thrust: ArrayLike) -> OperatingPoints:
         """Return the points at which all propellers together give a thrust.
@@ -234,7 +243,8 @@ class Drive:
         state = _only_where(np.isfinite(stick), state)
         duty = np.where(np.isfinite(stick), duty, np.nan)
         circuit = solve_circuit(self.motor, self.controller, self.battery, duty, state.speed * self.motor.gear_ratio)
-        return self._points(flat_airspeed, stick, duty, state, circuit, shape)
+        voltage = np.full(duty.shape, self.battery.open_circuit_voltage)
+        return self._points(flat_airspeed, stick, duty, voltage, state, circuit, shape)
 
     def at_full(self, airspeed: ArrayLike) -> OperatingPoints:
         """Return the equilibrium at full throttle.
@@ -251,9 +261,9 @@ class Drive:
         """
         return self.at_throttle(airspeed, 1.0)
 
-    def _torque_offered(self, duty: FloatArray, speed: FloatArray) -> FloatArray:
+    def _torque_offered(self, duty: FloatArray, speed: FloatArray, voltage: FloatArray) -> FloatArray:
         motor_speed = speed * self.motor.gear_ratio
-        current = solve_circuit(self.motor, self.controller, self.battery, duty, motor_speed).motor_current
+        current = solve_circuit(self.motor, self.controller, self.battery, duty, motor_speed, voltage).motor_current
         return self.motor.propeller_torque(current, motor_speed)
 
     def _points(
@@ -261,6 +271,7 @@ class Drive:
         airspeed: FloatArray,
         stick: FloatArray,
         duty: FloatArray,
+        open_circuit_voltage: FloatArray,
         state: PropellerState,
         circuit: Circuit,
         shape: tuple[int, ...],
@@ -271,7 +282,7 @@ class Drive:
         heat_of_ripple = self.motor.resistance * circuit.ripple_current**2 / 12.0
         lead_power = circuit.motor_voltage * circuit.motor_current + heat_of_ripple
         battery_power = circuit.battery_voltage * circuit.battery_current
-        cell_power = self.battery.open_circuit_voltage * circuit.battery_current
+        cell_power = open_circuit_voltage * circuit.battery_current
         propels = (thrust >= 0.0) & (shaft_power > 0.0)
         at_disk = thrust * airspeed * self.inflow_factor
         gained = thrust * airspeed * self.thrust_factor

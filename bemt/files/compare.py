@@ -74,10 +74,14 @@ def _angle_sentence(remedy: Remedy, comparison: Comparison) -> str:
     rows = "moving rows" if comparison.moving.any() else "static rows"
     if not remedy.worth_saying:
         return f"The blade angle fits: turning the blade by {angle:+.1f} deg would serve the {rows} hardly better."
-    more = " or more, at the end of what was tried: look for another mistake first" if remedy.at_limit else ""
     way, other = ("larger", "lower") if angle > 0.0 else ("smaller", "higher")
+    if remedy.at_limit:
+        return (
+            f"The blade acts as if its angle were {abs(angle):.1f} deg {way} or more, the end of what was tried: look "
+            "for another mistake first, such as units, diameter, pole pairs or a column taken for another."
+        )
     return (
-        f"The blade acts as if its angle were {abs(angle):.1f} deg {way}{more}, or the zero-lift angle of its sections "
+        f"The blade acts as if its angle were {abs(angle):.1f} deg {way}, or the zero-lift angle of its sections "
         f"as much {other}; the {rows} cannot tell which."
     )
 

@@ -491,8 +491,8 @@ class _Judge:
             # One Gauss-Newton step: over the angles in question CT and CP are nearly straight lines.
             blade = turned(blade_elements(self.propeller, changed), turn.best)
             step = -float(slope @ self._fit_errors(blade, fitted)) / float(slope @ slope)
-            step = min(max(step, -LARGEST_TURN), LARGEST_TURN)
-            return turned(blade, step), turn.best + step
+            angle = min(max(turn.best + step, -LARGEST_TURN), LARGEST_TURN)
+            return turned(blade, angle - turn.best), angle
 
         drag, strength = model.drag_scale, model.stall_strength
         found = [turn]
